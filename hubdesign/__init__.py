@@ -1,0 +1,3 @@
+"""Design a carrier's network: which links to operate, which stations act as hubs, with a proven bound."""
+
+__version__ = "0.1.0"
