@@ -60,6 +60,7 @@ def leg_factor(
     return collection if head_is_hub else 1.0
 
 
-def kept_revenue(revenue: Number, kept_per_transfer: Number, transfers: int) -> Number:
+def kept_revenue(revenue: Number, kept_per_transfer: Number, transfers: Number) -> Number:
     """Return the revenue left after `transfers`, money per unit: each keeps the share `kept_per_transfer`."""
-    return revenue * kept_per_transfer**transfers
+    kept: Number = kept_per_transfer**transfers
+    return revenue * kept

@@ -162,6 +162,26 @@ class Network:
             result[link].append(service)
         return tuple(tuple(services) for services in result)
 
+    @cached_property
+    def departures_today(self) -> Ints:
+        """Departures each way of each service in current.csv, shape (S,); rows of one service add up."""
+        result = np.zeros(len(self.service.link), dtype=np.int64)
+        place: dict[tuple[int, int, int], int] = {}
+        for service, (link, vehicle) in enumerate(
+            zip(self.service.link.tolist(), self.service.vehicle.tolist())
+        ):
+            tail, head = int(self.link.tail[link]), int(self.link.head[link])
+            place[tail, head, vehicle] = service
+            if self.link.both[link]:
+                place[head, tail, vehicle] = service
+        vehicles = {row.vehicle: v for v, row in enumerate(self.problem.vehicles)}
+        for today in self.problem.current:
+            if today.vehicle is not None:
+                key = (self.index[today.from_], self.index[today.to], vehicles[today.vehicle])
+                if key in place:
+                    result[place[key]] += today.frequency or 0
+        return result
+
     def leg_unit_cost(self, leg: int, tail_is_hub: bool, head_is_hub: bool) -> float:
         """Return the cost of a unit of volume on `leg`, money, by what its ends act as."""
         settings = self.problem.settings

@@ -1,0 +1,1 @@
+"""The decision model as arrays: variables, constraint families, objective."""
