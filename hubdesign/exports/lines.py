@@ -82,7 +82,7 @@ def trace_line(method: Method, lat1: float, lon1: float, lat2: float, lon2: floa
     """
     vertices = _true_line(method, lat1, lon1, lat2, lon2)
     runs = _split_at_poles(vertices)
-    over_pole = [lat for run in runs for _, lat in (run[0], run[-1]) if abs(lat) == 90.0]
+    over_pole = [lat for run in runs for _, lat in (run[0], run[-1]) if _is_pole(lat)]
     parts = [part for run in runs for part in _cut_at_antimeridian(run)]
     if not parts:
         return None
@@ -181,20 +181,24 @@ def _split_at_poles(vertices: list[_Vertex]) -> list[list[Position]]:
     A line that starts or ends at a pole is not split: it keeps the longitude its station gives the pole and
     runs along the pole (no way at all on the Earth) to the meridian that it leaves by.
     """
-    inner = [vertex for vertex in vertices[1:-1] if abs(vertex.lat) < 90.0]
+    inner = [vertex for vertex in vertices[1:-1] if not _is_pole(vertex.lat)]
     kept = [vertices[0], *inner, vertices[-1]]
     runs: list[list[Position]] = [[(kept[0].lon, kept[0].lat)]]
     for a, b in itertools.pairwise(kept):
         pole = math.copysign(90.0, a.lat + b.lat)
-        if abs(a.lat) == 90.0:
+        if _is_pole(a.lat):
             runs[-1].append((b.lon, pole))
-        elif abs(b.lat) == 90.0:
+        elif _is_pole(b.lat):
             runs[-1].append((a.lon, pole))
         elif abs(b.lon - a.lon) > _QUARTER_TURN:
             runs[-1].append((a.lon, pole))
             runs.append([(b.lon, pole)])
         runs[-1].append((b.lon, b.lat))
     return runs
+
+
+def _is_pole(lat: float) -> bool:
+    return round(abs(lat), DECIMALS) == 90.0
 
 
 def _cut_at_antimeridian(run: list[Position]) -> list[tuple[Position, ...]]:

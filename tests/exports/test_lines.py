@@ -131,6 +131,7 @@ def test_hard_lines_keep_their_ends_their_side_and_their_course(method, ends):
 @example(90.0, 30.0, 10.0, -100.0)
 @example(90.0, 170.0, 50.0, -100.0)
 @example(-90.0, 0.0, 90.0, 120.0)
+@example(0.0, 0.0, 89.99999999999999, 91.0)
 @example(89.9999, 0.0, 89.9999, 180.0)
 @example(89.9999999, 10.0, 89.9999999, -170.0)
 @example(0.0, 179.9999999, 1.0, -179.0)
