@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import threading
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 
 from hubdesign.design import Progress
 
@@ -45,6 +46,7 @@ class Control:
         self._listener = listener
         self._start = time.monotonic()
         self._cancelled = threading.Event()
+        self._interrupters: list[Callable[[], None]] = []
         self._lock = threading.Lock()
         self._best: float | None = None
         self._bound: float | None = None
@@ -59,8 +61,41 @@ class Control:
         return 0.0 if self._cancelled.is_set() else max(0.0, self.time_limit_s - self.elapsed_s())
 
     def cancel(self) -> None:
-        """Ask every engine to stop with what it has."""
+        """Ask every engine to stop with what it has; may be called from any thread."""
         self._cancelled.set()
+        for interrupt in list(self._interrupters):
+            interrupt()
+
+    @contextmanager
+    def interrupting(self, interrupt: Callable[[], None]) -> Iterator[None]:
+        """Have `cancel` call `interrupt` (a solver's own stop, safe from another thread) meanwhile."""
+        self._interrupters.append(interrupt)
+        try:
+            if self.cancelled:
+                interrupt()
+            yield
+        finally:
+            self._interrupters.remove(interrupt)
+
+    def part(
+        self,
+        time_limit_s: float,
+        *,
+        maximise: bool | None = None,
+        listener: Callable[[Progress], None] | None = None,
+    ) -> Control:
+        """Return a Control with its own record for a step of this solve; cancelled together with it."""
+        step = Control(
+            min(time_limit_s, self.remaining_s()),
+            self.gap,
+            self.threads,
+            self.seed,
+            self.maximise if maximise is None else maximise,
+            listener,
+        )
+        step._cancelled = self._cancelled
+        step._interrupters = self._interrupters
+        return step
 
     @property
     def cancelled(self) -> bool:
