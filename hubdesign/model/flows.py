@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 from hubdesign import costs
 from hubdesign.itineraries import Itineraries
 from hubdesign.network import Network
+from hubdesign.pricing import leg_factors
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -150,7 +151,7 @@ def _path_figures(
         tail_hub = origin_role == HUB if place == 0 else np.ones(len(demand), dtype=bool)
         head_hub = np.where(last == place, destination_role == HUB, True)
         unit += np.where(
-            legs[:, place] >= 0, leg_cost[legs[:, place]] * _factors(network, tail_hub, head_hub), 0.0
+            legs[:, place] >= 0, leg_cost[legs[:, place]] * leg_factors(network, tail_hub, head_hub), 0.0
         )
     moves = legs[:, 0] >= 0
     fees = np.where(moves, station.volume_fee[origin] + station.volume_fee[destination], 0.0)
@@ -193,27 +194,6 @@ def _without_local(columns: Ints, origin: Ints, destination: Ints, chosen: Bools
     return Incidence(columns[chosen], destination[chosen])
 
 
-def _factors(network: Network, tail_hub: Bools, head_hub: Bools) -> Floats:
-    """Return costs.leg_factor for whole arrays of roles."""
-    settings = network.problem.settings
-    table = np.array(
-        [
-            [
-                costs.leg_factor(
-                    tail,
-                    head,
-                    settings.collection_factor,
-                    settings.transfer_factor,
-                    settings.distribution_factor,
-                )
-                for head in (False, True)
-            ]
-            for tail in (False, True)
-        ]
-    )
-    return table[tail_hub.astype(np.int64), head_hub.astype(np.int64)]
-
-
 def _incidence(columns: Ints, items: Ints) -> Incidence:
     """Return the pairs of a padded (C, width) array, -1 for padding."""
     row, place = np.nonzero(items >= 0)
@@ -235,7 +215,7 @@ def build_leg_columns(network: Network, local: Itineraries) -> FlowColumns:
     data, station = network.demand, network.station
     tail, head = network.leg.tail[leg], network.leg.head[leg]
     starts, ends = tail == data.origin[demand], head == data.destination[demand]
-    factor = _factors(
+    factor = leg_factors(
         network, np.where(starts, origin_role == HUB, True), np.where(ends, destination_role == HUB, True)
     )
     fees = np.where(starts, station.volume_fee[tail], 0.0) + np.where(ends, station.volume_fee[head], 0.0)
