@@ -1,0 +1,1 @@
+"""Hub location without link costs, capacities or a fleet: proven by duals in closed form."""
