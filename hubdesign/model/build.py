@@ -29,6 +29,7 @@ from __future__ import annotations
 from hubdesign.itineraries import Itineraries, enumerate_itineraries
 from hubdesign.model.flows import FlowColumns, build_leg_columns, build_path_columns
 from hubdesign.model.hub_rows import (
+    add_allocated_volume_rows,
     add_allocation_rows,
     add_collection_capacity_rows,
     add_hub_capacity_rows,
@@ -85,6 +86,7 @@ def build_model(network: Network, flows: FlowColumns | None = None) -> Model:
     add_link_count_rows(model)
     add_spoke_link_rows(model)
     add_allocation_rows(model)
+    add_allocated_volume_rows(model)
     add_frequency_rows(model)
     add_frequency_balance_rows(model)
     add_departure_rows(model)

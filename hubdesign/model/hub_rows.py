@@ -239,3 +239,61 @@ def _add_pair_rows(model: Model, family: str, column: Ints, pair: Ints) -> None:
         np.zeros(len(pairs)),
         keyed(label, pairs),
     )
+
+
+def add_allocated_volume_rows(model: Model) -> None:
+    """Departures between a station and its hub carry all that must leave (reach) the station.
+
+    Single allocation in hub-and-spoke sends all volume of a spoke i over its hub h, at least
+    Q = sum_k d_k (1 - most unserved share) each way, so sum_s c_s n_s >= Q a_ih with c the usable capacities.
+    For any C > 0 and r = frac(Q / C), mixed-integer rounding (Nemhauser and Wolsey 1990) gives
+    sum_s G(c_s / C) n_s >= ceil(Q / C) a_ih with G(a) = floor(a) + min(1, frac(a) / r): valid at a_ih = 1,
+    trivial at 0 since every G is >= 0. One row for each type's C; they only strengthen.
+    """
+    network, settings = model.network, model.network.problem.settings
+    if not (
+        settings.single_allocation and settings.structure == "hub-and-spoke" and network.problem.vehicles
+    ):
+        return
+    station, hub = model.pairs
+    data = network.demand
+    due = data.volume * (1.0 - model.program.upper[model.family("unserved").members])
+    leaving = np.bincount(data.origin, weights=due, minlength=network.station_count)
+    reaching = np.bincount(data.destination, weights=due, minlength=network.station_count)
+    rows: list[tuple[int, list[int], Floats, float]] = []
+    for pair, (i, h) in enumerate(zip(station.tolist(), hub.tolist())):
+        for tail, head, volume in ((i, h, leaving[i]), (h, i, reaching[i])):
+            services = _services_between(model, tail, head)
+            usable = settings.max_load_factor * network.service.capacity[services]
+            rows += [
+                (pair, services, *_rounded(usable, float(volume), c)) for c in np.unique(usable).tolist()
+            ]
+    rows = [row for row in rows if row[3] > 0.0]
+    own, first = model.family("allocation").first, model.family("frequency").first
+    label = _pair_label(model)
+    model.program.rows.add(
+        "allocated_volume",
+        np.array([n for n, row in enumerate(rows) for _ in range(len(row[1]) + 1)], dtype=np.int64),
+        np.array([c for row in rows for c in (own + row[0], *(first + s for s in row[1]))], dtype=np.int64),
+        np.array([v for row in rows for v in (row[3], *(-row[2]))]),
+        np.full(len(rows), -np.inf),
+        np.zeros(len(rows)),
+        lambda member: f"{label(rows[member][0])}:{member}",
+    )
+
+
+def _services_between(model: Model, tail: int, head: int) -> list[int]:
+    """Return the services whose link has a leg from `tail` to `head`."""
+    network = model.network
+    legs = [leg for leg in network.legs_from[tail] if network.leg.head[leg] == head]
+    return [s for leg in legs for s in network.services_of[int(network.leg.link[leg])]]
+
+
+def _rounded(usable: Floats, volume: float, size: float) -> tuple[Floats, float]:
+    """Return (G(c_s / C), ceil(Q / C)) of the rounding; nothing is rounded where Q is a multiple of C."""
+    whole = np.floor(usable / size + 1e-9)
+    part = np.maximum(0.0, usable / size - whole)
+    rest = volume / size - np.floor(volume / size)
+    if rest < 1e-6 or rest > 1.0 - 1e-6:
+        return usable / size, volume / size
+    return whole + np.minimum(1.0, part / rest), float(np.ceil(volume / size))
