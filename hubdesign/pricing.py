@@ -187,7 +187,7 @@ def _price_flows(network: Network, design: Design) -> dict[str, object]:
     moves = np.array([bool(flow.legs) for flow in design.flows], dtype=bool)
     hub = np.zeros(network.station_count, dtype=bool)
     hub[list(design.hubs)] = True
-    owner, legs, first, last = _leg_entries(design)
+    owner, legs, first, last = leg_entries(design)
     tail_hub = ~first | hub[leg.tail[legs]]
     head_hub = ~last | hub[leg.head[legs]]
     carried = volume[owner]
@@ -219,7 +219,7 @@ def _price_flows(network: Network, design: Design) -> dict[str, object]:
     }
 
 
-def _leg_entries(design: Design) -> tuple[Ints, Ints, NDArray[np.bool_], NDArray[np.bool_]]:
+def leg_entries(design: Design) -> tuple[Ints, Ints, NDArray[np.bool_], NDArray[np.bool_]]:
     """Return (flow, leg, is the first leg, is the last leg) of every leg travelled."""
     sizes = np.array([len(flow.legs) for flow in design.flows], dtype=np.int64)
     owner = np.repeat(np.arange(len(sizes)), sizes)
