@@ -39,10 +39,10 @@ def single_unit_costs(instance: HubInstance, allocation: Ints) -> Floats:
     leave = np.where(own, 0.0, instance.distribute[allocation, stations] + instance.transfer_cost[allocation])
     between = instance.transfer[np.ix_(allocation, allocation)].copy()
     same = allocation[:, None] == allocation[None, :]
-    both_outside = ~own[:, None] & ~own[None, :]
-    # one hub serves both ends: it is one interior stop, not two
+    both_at_hub = own[:, None] & own[None, :]
+    # one hub serves both ends: it is one interior stop, or none where it is an end itself
     between[same] = 0.0
-    stop = np.where(same & both_outside, instance.transfer_cost[allocation][:, None], 0.0)
+    stop = np.where(same & ~both_at_hub, instance.transfer_cost[allocation][:, None], 0.0)
     return entry[:, None] + between + leave[None, :] - stop
 
 
