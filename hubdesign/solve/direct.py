@@ -18,6 +18,7 @@ from hubdesign.model.build import build_model
 from hubdesign.model.layout import Model
 from hubdesign.model.objective import Objective, Phase, build_objective, goal_phases
 from hubdesign.network import Network
+from hubdesign.solve.allocation_search import search_allocation
 from hubdesign.solve.control import Control
 from hubdesign.solve.finish import Finisher, Plan, conclude, integers_of
 from hubdesign.solve.relaxation import LpStatus, Relaxation
@@ -28,6 +29,10 @@ Floats = NDArray[np.float64]
 
 #: Up to this many pool rows SCIP gets all of them to separate by itself; more only slow it down.
 _LAZY_ROWS = 20_000
+
+#: A restricted model with the allocation fixed gets this share of the time left, and this many nodes.
+_FIXED_SHARE = 0.1
+_FIXED_NODES = 300
 
 #: Share of the time limit that a first phase may take.
 _FIRST_PHASE = 0.7
@@ -114,6 +119,11 @@ class PhaseRun:
 
     def design(self) -> Design:
         """Solve and conclude."""
+        for start in self.starts:
+            self.offer(start)
+        found = search_allocation(self.model, self.control)
+        for point in found:
+            self.offer(point)
         lp = Relaxation(self.model.program, self.objective.coefficients, seed=self.control.seed)
         for rows in self.held:
             lp.add_rows(*rows)
@@ -122,13 +132,36 @@ class PhaseRun:
             return Design(Status.INFEASIBLE, progress=self.record.record)
         if status is LpStatus.OPTIMAL:
             self.improve_bound(lp.objective)
-        for start in self.starts:
-            self.offer(start)
+        for point in found[:1]:
+            self.offer(self._with_allocation_fixed(point, lp))
         rounded = round_up(self.model, lp, self.finisher)
         if rounded is not None:
             self.offer(rounded)
         end = None if self._closed() else self._branch(lp)
         return self._conclude(end)
+
+    def _with_allocation_fixed(self, point: Floats, lp: Relaxation) -> Floats:
+        """Return the best point found with the hubs and the allocation of `point`.
+
+        The search gives each pair of stations one mode; with the allocation fixed the model is small, and
+        SCIP sorts out where two modes on a pair are better.
+        """
+        program = self.model.program
+        lower, upper = program.lower, program.upper
+        for name in ("hub", "allocation"):
+            members = self.model.family(name).members
+            lower[members] = upper[members] = point[members]
+        scip = ScipModel(program, self.objective.coefficients, self._rows(lp), lower=lower, upper=upper)
+        if self.finisher.plan(point) is not None:
+            scip.add_start(self.finisher.point)
+        part = self.control.part(_FIXED_SHARE * self.control.remaining_s())
+        end = scip.run(part, gap=0.5 * self.control.gap, node_limit=_FIXED_NODES)
+        return point if end.values is None else end.values
+
+    def _rows(self, lp: Relaxation) -> list[RowSet]:
+        """Return the held rows and the pool rows in use."""
+        pool, inside = self.model.program.pool, np.flatnonzero(lp.pool_in)
+        return [*self.held, (sparse.csr_array(lp.pool[inside]), pool.lower[inside], pool.upper[inside])]
 
     def _closed(self) -> bool:
         """Whether the plan in hand meets the gap asked already."""
@@ -136,13 +169,11 @@ class PhaseRun:
 
     def _branch(self, lp: Relaxation) -> MipStatus:
         pool = self.model.program.pool
-        rows: list[RowSet] = [*self.held]
         lazy: list[RowSet] = []
-        inside, outside = np.flatnonzero(lp.pool_in), np.flatnonzero(~lp.pool_in)
-        rows.append((sparse.csr_array(lp.pool[inside]), pool.lower[inside], pool.upper[inside]))
+        outside = np.flatnonzero(~lp.pool_in)
         if pool.count <= _LAZY_ROWS:
             lazy.append((sparse.csr_array(lp.pool[outside]), pool.lower[outside], pool.upper[outside]))
-        scip = ScipModel(self.model.program, self.objective.coefficients, rows, lazy)
+        scip = ScipModel(self.model.program, self.objective.coefficients, self._rows(lp), lazy)
         if self.point is not None:
             scip.add_start(self.point)
         end = scip.run(
