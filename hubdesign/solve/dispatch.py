@@ -25,7 +25,10 @@ def solve(
         Plans on the same candidates to start from; none better is ever left behind.
     """
     from hubdesign.solve.direct import solve_direct
+    from hubdesign.solve.hub_location.adapter import fits, solve_hub_location
 
     network = build_network(problem) if network is None else network
     control.maximise = problem.settings.goal != "least-cost"
+    if fits(network):
+        return solve_hub_location(network, control, starts)
     return solve_direct(network, control, starts)

@@ -211,12 +211,14 @@ class AllocationMaster:
         return best
 
     def _levels(self, left: Left, costs: Floats, opened: Bools) -> list[Floats]:
-        """Return candidates for v: the solver's, and the cheapest open choice of each station."""
-        levels = [self._row_duals[: self.n]]
-        choices = np.where(left.allowed & opened, costs, np.inf)
-        cheapest = choices.min(axis=1)
-        levels.append(np.where(np.isfinite(cheapest), cheapest, levels[0]))
-        return levels
+        """Return candidates for v: the solver's, and the cheapest open choice of each station.
+
+        Neither below the station's cheapest choice left: up to there v charges no hub.
+        """
+        least = np.where(left.allowed, costs, np.inf).min(axis=1)
+        cheapest = np.where(left.allowed & opened, costs, np.inf).min(axis=1)
+        solver = np.maximum(self._row_duals[: self.n], least)
+        return [solver, np.where(np.isfinite(cheapest), cheapest, solver)]
 
     def _multipliers(self) -> tuple[Floats, Bools]:
         owner = np.array(self.owners, dtype=np.int64)

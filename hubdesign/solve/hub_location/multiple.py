@@ -61,8 +61,19 @@ class MultipleIncumbent:
         return self.cost - max(self.control.gap, TOLERANCE) * size
 
 
-def solve_multiple(instance: HubInstance, control: Control) -> HubAnswer:
+def solve_multiple(
+    instance: HubInstance, control: Control, hub_sets: tuple[tuple[int, ...], ...] = ()
+) -> HubAnswer:
     """Return the cheapest multiple-allocation plan of `instance`, with its bound.
+
+    Parameters
+    ----------
+    instance
+        The question.
+    control
+        Limits and the record.
+    hub_sets
+        Sets of open hubs to start from; those the instance does not allow are passed over.
 
     Raises
     ------
@@ -80,6 +91,9 @@ def solve_multiple(instance: HubInstance, control: Control) -> HubAnswer:
     incumbent = MultipleIncumbent(instance, relaxation, control)
     for chosen in starts:
         incumbent.offer(relaxation.hubs[chosen])
+    for hubs in hub_sets:
+        if is_allowed(instance, hubs):
+            incumbent.offer(np.array(hubs))
     root = Root(relaxation, incumbent, control, promise, starts)
     bound = root.run()
     if not root.finished:
@@ -94,6 +108,14 @@ def first_plans(relaxation: Relaxation, control: Control) -> tuple[Relaxation, l
     size = abs(cost + relaxation.constant) or abs(cost)
     factor = UNIT / size if size > 0.0 else 1.0
     return relaxation.rescale(factor), [chosen], seen * factor
+
+
+def is_allowed(instance: HubInstance, hubs: tuple[int, ...]) -> bool:
+    """Whether the set of open hubs obeys candidates, forced hubs and counts."""
+    chosen = set(hubs)
+    may = set(instance.hub_candidates.tolist())
+    must = set(np.flatnonzero(instance.forced).tolist())
+    return bool(hubs) and must <= chosen <= may and instance.hubs_min <= len(chosen) <= instance.hubs_max
 
 
 def _idle_answer(instance: HubInstance, relaxation: Relaxation) -> HubAnswer:

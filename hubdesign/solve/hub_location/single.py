@@ -21,7 +21,7 @@ from hubdesign.solve.hub_location.choosing import AllocationMaster, Left, settle
 from hubdesign.solve.hub_location.evaluate import single_unit_costs, total_cost
 from hubdesign.solve.hub_location.instance import Bools, Floats, HubAnswer, HubInstance, HubStatus, Ints
 from hubdesign.solve.hub_location.master import Domain
-from hubdesign.solve.hub_location.multiple import first_plans
+from hubdesign.solve.hub_location.multiple import first_plans, is_allowed
 from hubdesign.solve.hub_location.pairing import Pairs, pair_cuts
 from hubdesign.solve.hub_location.relaxation import Relaxation, build_relaxation
 from hubdesign.solve.hub_location.root import Root
@@ -67,7 +67,7 @@ class SingleIncumbent:
         limit = self.instance.collection_capacity * (1.0 + 1e-9)
         if (load > limit).any() or (allocation[hubs] != hubs).any():
             return np.inf
-        if not self.instance.hubs_min <= len(hubs) <= self.instance.hubs_max:
+        if not is_allowed(self.instance, tuple(hubs.tolist())):
             return np.inf
         money = total_cost(self.instance, hubs, single_unit_costs(self.instance, allocation))
         cost = money * self.scale - self.shift
@@ -83,8 +83,18 @@ class SingleIncumbent:
         return self.cost - max(self.control.gap, TOLERANCE) * abs(self.cost + self.shift)
 
 
-def solve_single(instance: HubInstance, control: Control) -> HubAnswer:
-    """Return the cheapest single-allocation plan of `instance`, with its bound."""
+def solve_single(instance: HubInstance, control: Control, allocations: tuple[Ints, ...] = ()) -> HubAnswer:
+    """Return the cheapest single-allocation plan of `instance`, with its bound.
+
+    Parameters
+    ----------
+    instance
+        The question.
+    control
+        Limits and the record.
+    allocations
+        Hubs of the stations, (n,) each, to start from; those the instance does not allow are passed over.
+    """
     relaxation = build_relaxation(instance, closure=False)
     if relaxation.hubs_min > relaxation.hubs_max:
         return HubAnswer((), None, np.inf, np.inf, HubStatus.INFEASIBLE)
@@ -95,6 +105,8 @@ def solve_single(instance: HubInstance, control: Control) -> HubAnswer:
     found = improve_hubs(choice, starts[0], shortlist, control.stop_requested)
     if found is not None:
         incumbent.take(choice.hubs[found[1]])
+    for allocation in allocations:
+        incumbent.take(allocation)
     root = Root(relaxation, incumbent, control, promise, starts)
     bound = root.run()
     if not root.finished and not control.stop_requested():
