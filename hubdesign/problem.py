@@ -13,6 +13,15 @@ from typing import Any, Literal, Self
 Structure = Literal["point-to-point", "hub-and-spoke", "mixed", "current"]
 Goal = Literal["least-cost", "most-profit", "most-volume"]
 
+#: What an objective counts: cost is minimised, profit and volume are maximised.
+Phase = Literal["cost", "profit", "volume"]
+
+_PHASE_OF_GOAL: dict[Goal, Phase] = {
+    "least-cost": "cost",
+    "most-profit": "profit",
+    "most-volume": "volume",
+}
+
 #: Stands for "unlimited" in `Settings.max_transfers`.
 UNLIMITED = -1
 
@@ -166,6 +175,11 @@ class Settings:
         if self.unserved is None:
             return self.goal != "least-cost"
         return self.unserved == "allowed"
+
+    @property
+    def objective_phase(self) -> Phase:
+        """What the objective of a design counts."""
+        return _PHASE_OF_GOAL[self.goal]
 
     @property
     def transfers_at_most(self) -> int:

@@ -3,15 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from hubdesign.model.layout import Model
+from hubdesign.problem import Phase
 
 Floats = NDArray[np.float64]
-Phase = Literal["cost", "profit", "volume"]
 
 #: Size that a large coefficient of a scaled objective has; solver tolerances are absolute.
 _TYPICAL = 100.0
@@ -55,16 +54,14 @@ class Objective:
 def goal_phases(model: Model) -> tuple[Phase, ...]:
     """Return the phases of the goal: volume comes first and is then held at least cost.
 
-    Today's network, where volume must not be left unserved, carries what it can and then costs least.
+    Today's network, where volume must not be left unserved, carries what it can first.
     """
     settings = model.network.problem.settings
     if settings.goal == "most-volume":
         return "volume", "cost"
-    if settings.goal == "most-profit":
-        return ("profit",)
     if settings.structure == "current" and not settings.unserved_allowed:
-        return "volume", "cost"
-    return ("cost",)
+        return "volume", settings.objective_phase
+    return (settings.objective_phase,)
 
 
 def build_objective(model: Model, phase: Phase) -> Objective:

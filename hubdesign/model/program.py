@@ -137,7 +137,7 @@ class Program:
         lower: Floats,
         upper: Floats,
         *,
-        integer: bool,
+        integer: bool | Bools,
         label: Label,
         expressions: dict[str, Floats] | None = None,
     ) -> Family:
@@ -147,7 +147,7 @@ class Program:
         self.columns[family] = result
         self._lower.append(np.asarray(lower, dtype=np.float64))
         self._upper.append(np.array(upper, dtype=np.float64))
-        self._integer.append(np.full(count, integer))
+        self._integer.append(np.array(np.broadcast_to(np.asarray(integer, dtype=bool), count)))
         self.column_count += count
         for name in {*self.expressions, *(expressions or {})}:
             so_far = self.expressions.get(name, np.zeros(result.first))

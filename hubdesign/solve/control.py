@@ -27,6 +27,8 @@ class Control:
         Whether a larger objective is better; the record keeps best and bound monotone accordingly.
     listener
         Called with each new :class:`Progress`, from whichever thread reports.
+    announcer
+        Called with the one line in which an engine says what it does.
     """
 
     def __init__(
@@ -37,6 +39,7 @@ class Control:
         seed: int = 1,
         maximise: bool = False,
         listener: Callable[[Progress], None] | None = None,
+        announcer: Callable[[str], None] | None = None,
     ) -> None:
         self.time_limit_s = time_limit_s
         self.gap = gap
@@ -44,6 +47,7 @@ class Control:
         self.seed = seed
         self.maximise = maximise
         self._listener = listener
+        self._announcer = announcer
         self._start = time.monotonic()
         self._cancelled = threading.Event()
         self._interrupters: list[Callable[[], None]] = []
@@ -51,6 +55,11 @@ class Control:
         self._best: float | None = None
         self._bound: float | None = None
         self._record: list[Progress] = []
+
+    def announce(self, text: str) -> None:
+        """Say in one line what kind of problem this is and how it is solved."""
+        if self._announcer is not None:
+            self._announcer(text)
 
     def elapsed_s(self) -> float:
         """Wall time since the solve began, s."""

@@ -16,8 +16,9 @@ from scipy import sparse
 from hubdesign.design import Design, Status
 from hubdesign.model.build import build_model
 from hubdesign.model.layout import Model
-from hubdesign.model.objective import Objective, Phase, build_objective, goal_phases
+from hubdesign.model.objective import Objective, build_objective, goal_phases
 from hubdesign.network import Network
+from hubdesign.problem import Phase
 from hubdesign.solve.allocation_search import search_allocation
 from hubdesign.solve.control import Control
 from hubdesign.solve.finish import Finisher, Plan, conclude, integers_of
@@ -51,6 +52,7 @@ def solve_direct(network: Network, control: Control, starts: tuple[Design, ...] 
         Plans on the same candidates to start from.
     """
     model = build_model(network)
+    control.announce(_method(model))
     phases = goal_phases(model)
     points = tuple(integers_of(model, plan) for plan in starts)
     if len(phases) == 1:
@@ -80,9 +82,14 @@ def hold(model: Model, objective: Objective, value: float) -> RowSet:
 
 
 def join_phases(first: Design, second: Design, plan: Plan | None, model: Model) -> Design:
-    """Return the second phase's plan under the first phase's proof; the cost goes beside it."""
+    """Return the second phase's plan under the first phase's proof; the cost goes beside it.
+
+    Where volume came first only as a means (today's network) the second phase is the answer.
+    """
     if plan is None or not second.has_plan or first.bound is None:
         return first
+    if model.network.problem.settings.objective_phase != "volume":
+        return second
     carried = plan.bill.volume_carried
     return second.replace(
         status=first.status,

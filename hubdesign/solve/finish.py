@@ -9,8 +9,9 @@ from numpy.typing import NDArray
 
 from hubdesign.design import Design, Frequency, Status, is_proven, relative_gap, round_bound_outward
 from hubdesign.model.layout import Model
-from hubdesign.model.objective import Objective, Phase
+from hubdesign.model.objective import Objective
 from hubdesign.pricing import Bill, price
+from hubdesign.problem import Phase
 from hubdesign.solve.control import Control
 from hubdesign.solve.relaxation import LpStatus, Relaxation
 
