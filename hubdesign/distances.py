@@ -6,6 +6,7 @@ The geodesic on WGS 84 is computed by geographiclib (Karney 2013, Algorithms for
 
 from __future__ import annotations
 
+from functools import lru_cache
 from typing import Literal
 
 import numpy as np
@@ -19,6 +20,15 @@ Method = Literal["geodesic", "great-circle"]
 
 def geodesic_km(lat1: float, lon1: float, lat2: float, lon2: float) -> float:
     """Return the length of the shortest geodesic on WGS 84, km; latitudes and longitudes in degrees."""
+    # One order of the two ends, so that both directions share a result to the last bit.
+    if (lat2, lon2) < (lat1, lon1):
+        lat1, lon1, lat2, lon2 = lat2, lon2, lat1, lon1
+    return _inverse_km(lat1, lon1, lat2, lon2)
+
+
+@lru_cache(maxsize=1 << 16)
+def _inverse_km(lat1: float, lon1: float, lat2: float, lon2: float) -> float:
+    """Solve one inverse problem; 0.1 ms each, and a case asks for every pair several times."""
     from geographiclib.geodesic import Geodesic
 
     return float(Geodesic.WGS84.Inverse(lat1, lon1, lat2, lon2, Geodesic.DISTANCE)["s12"]) / 1000.0

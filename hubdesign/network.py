@@ -203,7 +203,7 @@ def build_network(problem: Problem) -> Network:
     cannot operate never becomes a variable. For the structure ``current`` the candidates are today's links
     and types, whatever the range, and today's hubs are the hubs.
     """
-    modes = _modes(problem)
+    modes = modes_in_force(problem)
     station = _station_arrays(problem)
     drafts = (
         _current_drafts(problem, modes)
@@ -228,7 +228,7 @@ class _Draft:
     vehicles: tuple[int, ...] | None  # None: every type of the mode that has the range
 
 
-def _modes(problem: Problem) -> tuple[str, ...]:
+def modes_in_force(problem: Problem) -> tuple[str, ...]:
     """Return the modes in force: the fleet's, else those named anywhere, else air."""
     if problem.vehicles:
         return tuple(dict.fromkeys(vehicle.mode for vehicle in problem.vehicles))
@@ -361,7 +361,7 @@ def current_mode(problem: Problem, row: CurrentLink) -> str:
     for listed in problem.links:
         if {listed.from_, listed.to} == pair:
             return listed.mode
-    return _modes(problem)[0]
+    return modes_in_force(problem)[0]
 
 
 def _current_drafts(problem: Problem, modes: tuple[str, ...]) -> list[_Draft]:
@@ -500,7 +500,7 @@ def _link_arrays(problem: Problem, drafts: list[_Draft], distance_km: Floats) ->
 
 def _operated_today(problem: Problem) -> set[tuple[frozenset[str], int]]:
     """Return the (ends, mode) of today's links: they cost no setup."""
-    modes = _modes(problem)
+    modes = modes_in_force(problem)
     return {
         (frozenset((row.from_, row.to)), modes.index(current_mode(problem, row))) for row in problem.current
     }

@@ -1,0 +1,21 @@
+"""Codes that name a record of another table."""
+
+from __future__ import annotations
+
+from hubdesign.checks.findings import nearest
+from hubdesign.checks.places import Case
+from hubdesign.errors import Fault
+
+
+def unknown_code(
+    case: Case, table: str, index: int, column: str, code: str, target: str
+) -> tuple[Fault, ...]:
+    """Return the fault of a code that the table `target` (stations or fleet) does not hold.
+
+    Silent where that table could not be read, or where the code stands in a row of it that is at fault.
+    """
+    known = case.station_codes if target == "stations" else case.vehicle_codes
+    if code in known or target in case.places.unread or code in case.places.stray.get(target, ()):
+        return ()
+    label = case.places.label(target)
+    return case.row(table, index, column, f"{code} is not in {label}", nearest(code, known) or "add it there")
