@@ -7,7 +7,7 @@ import enum
 from dataclasses import dataclass
 from typing import Any, Self
 
-from hubdesign.units import COST_TOLERANCE, GAP_FLOOR
+from hubdesign.units import GAP_FLOOR
 
 
 class Status(enum.Enum):
@@ -145,7 +145,7 @@ def is_proven(gap: float | None, asked: float) -> bool:
 def round_bound_outward(bound: float, maximise: bool, scale: float = 0.0) -> float:
     """Return `bound` weakened by the tolerance of float arithmetic and solvers.
 
-    A bound is a promise: 1e-9 of itself or of `scale` (the size of the sums it came from) is given away.
+    A bound is a promise: 5e-10 of itself or of `scale` (the size of the sums it came from) is given away.
     """
-    slack = COST_TOLERANCE * 1e-3 * max(abs(bound), abs(scale))
+    slack = 0.5e-9 * max(abs(bound), abs(scale))
     return bound + slack if maximise else bound - slack

@@ -9,6 +9,7 @@ from hubdesign import costs
 from hubdesign.itineraries import LIMIT_TOLERANCE
 from hubdesign.model.layout import Model
 from hubdesign.network import Network
+from hubdesign.pricing import vehicles_needed
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -128,18 +129,13 @@ def _heaviest_leg_volume(model: Model) -> Floats:
 def add_vehicle_variables(model: Model) -> None:
     """m_v: vehicles used, b_v: purchases; 0 for a type whose hours per vehicle are not given."""
     vehicles = model.network.problem.vehicles
-    hours_h = np.zeros(len(vehicles))
-    service = model.network.service
-    most = model.program.upper[model.family("frequency").members] if len(service.link) else np.zeros(0)
-    np.add.at(hours_h, service.vehicle, service.vehicle_h * model.network.ways[service.link] * most)
-    upper = np.array(
-        [
-            0.0 if row.hours_per_vehicle is None else np.ceil(hours_h[v] / row.hours_per_vehicle)
-            for v, row in enumerate(vehicles)
-        ]
-    )
-    cap = np.array([np.inf if row.available is None else float(row.available) for row in vehicles])
-    upper = np.minimum(upper, cap) if len(vehicles) else np.zeros(0)
+    today = model.network.problem.settings.structure == "current"
+    frequency = model.family("frequency")
+    fewest = vehicles_for(model, model.program.lower[frequency.members])
+    most = vehicles_for(model, model.program.upper[frequency.members])
+    if not today:
+        available = [np.inf if row.available is None else float(row.available) for row in vehicles]
+        fewest, most = np.zeros(len(vehicles)), np.minimum(most, np.array(available))
     owned = np.array([float(row.owned) for row in vehicles])
 
     def label(member: int) -> str:
@@ -147,20 +143,30 @@ def add_vehicle_variables(model: Model) -> None:
 
     model.program.add_columns(
         "vehicles",
-        np.zeros(len(vehicles)),
-        upper,
+        fewest,
+        most,
         integer=True,
         label=label,
         expressions={"cost": np.array([row.cost_per_vehicle for row in vehicles], dtype=np.float64)},
     )
     model.program.add_columns(
         "purchases",
-        np.zeros(len(vehicles)),
-        np.maximum(0.0, upper - owned) if len(vehicles) else np.zeros(0),
+        np.maximum(0.0, fewest - owned),
+        np.maximum(0.0, most - owned),
         integer=True,
         label=label,
         expressions={"investment": np.array([row.purchase_cost for row in vehicles], dtype=np.float64)},
     )
+
+
+def vehicles_for(model: Model, departures: Floats) -> Floats:
+    """Return how many vehicles of each type work `departures` (each way, per service)."""
+    network = model.network
+    service, vehicles = network.service, network.problem.vehicles
+    hours_h = np.zeros(len(vehicles))
+    np.add.at(hours_h, service.vehicle, service.vehicle_h * network.ways[service.link] * departures)
+    needed = [vehicles_needed(float(hours_h[v]), row.hours_per_vehicle) for v, row in enumerate(vehicles)]
+    return np.array(needed, dtype=np.float64)
 
 
 def add_unserved_variables(model: Model) -> None:

@@ -10,6 +10,7 @@ from numpy.typing import NDArray
 from hubdesign.design import Design, Frequency, Status, is_proven, relative_gap, round_bound_outward
 from hubdesign.model.layout import Model
 from hubdesign.model.objective import Objective
+from hubdesign.model.variables import vehicles_for
 from hubdesign.pricing import Bill, price
 from hubdesign.problem import Phase
 from hubdesign.solve.control import Control
@@ -114,22 +115,9 @@ def integers_of(model: Model, design: Design) -> Floats:
 
 def set_fleet(model: Model, values: Floats) -> None:
     """Set vehicles and purchases to what the frequencies of `values` need."""
-    network = model.network
-    vehicles = network.problem.vehicles
-    if not vehicles:
-        return
-    hours_h = np.zeros(len(vehicles))
-    departures = values[model.family("frequency").members]
-    service = network.service
-    np.add.at(hours_h, service.vehicle, service.vehicle_h * network.ways[service.link] * departures)
-    used = np.array(
-        [
-            0.0 if v.hours_per_vehicle is None else np.ceil(hours_h[k] / v.hours_per_vehicle - 1e-9)
-            for k, v in enumerate(vehicles)
-        ]
-    )
+    used = vehicles_for(model, values[model.family("frequency").members])
     values[model.family("vehicles").members] = used
-    owned = np.array([float(v.owned) for v in vehicles])
+    owned = np.array([float(row.owned) for row in model.network.problem.vehicles])
     values[model.family("purchases").members] = np.maximum(0.0, used - owned)
 
 

@@ -1,0 +1,5 @@
+"""``python -m hubdesign``."""
+
+from hubdesign.cli import main
+
+main(prog_name="hubdesign")
