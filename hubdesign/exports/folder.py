@@ -70,7 +70,7 @@ class Claim:
             try:
                 new.mkdir()
                 yield new
-                _write_manifest(new, kind)
+                write_manifest(new, kind)
                 sync_tree(new)
                 check_target(self.target, self._inputs)  # somebody may have put a file there meanwhile
                 swap_in(new, self.target)
@@ -192,7 +192,8 @@ def changed_files(folder: str | Path) -> list[str]:
     ]
 
 
-def _write_manifest(folder: Path, kind: str) -> None:
+def write_manifest(folder: Path, kind: str) -> None:
+    """Write the manifest of a complete result folder: a hash of every file below it."""
     paths = [Path(place) / name for place, _, names in os.walk(folder) for name in names]
     files = {path.relative_to(folder).as_posix(): _sha256(path) for path in paths}
     told = {

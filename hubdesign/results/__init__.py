@@ -14,6 +14,9 @@ from hubdesign.network import Network
 from hubdesign.pricing import Bill
 from hubdesign.results.operation import tabulate_links, tabulate_stations, tabulate_vehicles
 from hubdesign.results.summary import (
+    COST_COLUMNS,
+    INVESTMENT_COLUMNS,
+    TOTAL_COLUMNS,
     objective_unit,
     settings_in_force,
     summarise_answer,
@@ -26,6 +29,9 @@ from hubdesign.results.travel import trace_travel
 from hubdesign.results.volume import tabulate_itineraries, tabulate_progress, tabulate_unserved
 
 __all__ = [
+    "COST_COLUMNS",
+    "INVESTMENT_COLUMNS",
+    "TOTAL_COLUMNS",
     "Cell",
     "Column",
     "Results",

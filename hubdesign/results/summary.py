@@ -6,14 +6,68 @@ from typing import Any
 
 import numpy as np
 
-from hubdesign.design import Design, Status, relative_gap
+from hubdesign.design import Design, relative_gap
 from hubdesign.network import Network
 from hubdesign.pricing import Bill
 from hubdesign.problem import UNLIMITED, Settings
+from hubdesign.results.table import Column
 from hubdesign.results.travel import Travel
 from hubdesign.results.volume import itinerary_hours, itinerary_lengths
 from hubdesign.schema import SETTINGS
 from hubdesign.units import KG_PER_TONNE
+
+_MONEY, _ONCE = "money per period", "money once"
+
+COST_COLUMNS = (
+    Column("operating", "number", _MONEY, "trips: departures, block hours, kilometres"),
+    Column("volume", "number", _MONEY, "unit costs of volume on its legs"),
+    Column("transfer", "number", _MONEY, "volume at its interior stops"),
+    Column("hub_fixed", "number", _MONEY, "open hubs"),
+    Column("link_fixed", "number", _MONEY, "open links"),
+    Column("vehicle", "number", _MONEY, "vehicles used"),
+    Column("departure_fees", "number", _MONEY, "departures at their stations"),
+    Column("volume_fees", "number", _MONEY, "volume where it starts and ends"),
+    Column("co2", "number", _MONEY, "emissions"),
+    Column("unserved", "number", _MONEY, "volume left unserved"),
+    Column("total", "number", _MONEY, "sum of the parts"),
+    Column("revenue", "number", _MONEY, "revenue kept after transfers"),
+    Column("profit", "number", _MONEY, "revenue less total"),
+)
+INVESTMENT_COLUMNS = (
+    Column("hub_setup", "number", _ONCE, "opening hubs that are none today"),
+    Column("link_setup", "number", _ONCE, "opening links that are not operated today"),
+    Column("purchase", "number", _ONCE, "vehicles beyond the owned"),
+    Column("total", "number", _ONCE, "sum of the three"),
+)
+TOTAL_COLUMNS = (
+    Column("links", "integer", "links", "open links"),
+    Column("hubs", "integer", "hubs", "open hubs"),
+    Column("volume_demanded", "number", "volume per period", "O-D volume of the inputs"),
+    Column("volume_carried", "number", "volume per period", "O-D volume carried, each unit once"),
+    Column("volume_unserved", "number", "volume per period", "O-D volume left unserved"),
+    Column("share_served", "number", "share", "volume carried / volume demanded"),
+    Column("departures", "integer", "departures per period", "both directions of every link"),
+    Column("block_hours", "number", "hours per period", "block time of all departures"),
+    Column("vehicle_hours", "number", "hours per period", "block and turn time of all departures"),
+    Column("vehicles", "integer", "vehicles", "vehicles used"),
+    Column("vehicles_purchased", "integer", "vehicles", "used beyond the owned"),
+    Column("vehicle_km", "number", "km per period", "distance of all departures"),
+    Column("capacity_km", "number", "volume-km per period", "capacity times distance (ASK)"),
+    Column("volume_km", "number", "volume-km per period", "volume times the distance travelled (RPK)"),
+    Column("load_factor", "number", "share", "volume_km / capacity_km"),
+    Column("stage_length_km", "number", "km", "vehicle_km / departures"),
+    Column("circuity", "number", "ratio", "distance travelled / O-D distance, weighted by volume"),
+    Column("transfers", "number", "volume per period", "volume times its interior stops"),
+    Column("transfers_per_unit", "number", "ratio", "transfers / volume carried"),
+    Column("nonstop_share", "number", "share", "share of the volume carried that never transfers"),
+    Column("itinerary_hours", "number", "hours", "average time of an itinerary, weighted by volume"),
+    Column("unit_cost_per_capacity_km", "number", "money per volume-km", "total cost / capacity_km"),
+    Column("unit_cost_per_volume_km", "number", "money per volume-km", "total cost / volume_km"),
+    Column("unit_cost_per_unit", "number", "money per unit of volume", "total cost / volume carried"),
+    Column("yield_per_volume_km", "number", "money per volume-km", "revenue / volume_km"),
+    Column("co2_tonnes", "number", "tonnes per period", "emissions"),
+    Column("co2_kg_per_volume_km", "number", "kg per volume-km", "emissions / volume_km"),
+)
 
 
 def objective_unit(settings: Settings) -> str:
@@ -130,11 +184,6 @@ def settings_in_force(settings: Settings) -> dict[str, dict[str, Any]]:
     for mode, factor in settings.mode_distance_factor:
         told[f"mode.{mode}"] = {"distance_factor": factor}
     return told
-
-
-def is_settled(status: Status) -> bool:
-    """Whether a status needs no further search."""
-    return status in (Status.PROVEN, Status.INFEASIBLE)
 
 
 def _ratio(part: float, whole: float) -> float | None:
