@@ -85,8 +85,11 @@ def export_gis(outputs: str | Path, to: str, target: str | Path) -> tuple[str, .
             for layer in layers:
                 write_geojson(folder / f"{layer.name}.geojson", layer.features)
         else:
-            with _fixed_time(pyogrio):
-                _WRITERS[to](pyogrio, folder, layers)
+            try:
+                with _fixed_time(pyogrio):
+                    _WRITERS[to](pyogrio, folder, layers)
+            except _write_errors(pyogrio) as error:
+                raise OutputError(f"cannot be written as {to}: {error}") from error
         for layer in layers:
             (folder / f"{layer.name}.sld").write_text(layer.style.sld, encoding="utf-8", newline="\n")
     return tuple(read_manifest(claim.target).files)
@@ -309,6 +312,7 @@ def _fixed_time(pyogrio: ModuleType) -> Iterator[None]:
 def _import_pyogrio() -> ModuleType:
     try:
         import pyogrio
+        import pyogrio.errors
         import pyogrio.raw
     except ImportError as error:
         raise ExtraMissingError(
@@ -317,6 +321,12 @@ def _import_pyogrio() -> ModuleType:
         ) from error
     module: ModuleType = pyogrio
     return module
+
+
+def _write_errors(pyogrio: ModuleType) -> tuple[type[Exception], ...]:
+    """Return what GDAL and SQLite raise where a file cannot be written; none of it is an OSError."""
+    names = ("DataSourceError", "DataLayerError", "FeatureError", "FieldError", "GeometryError")
+    return (sqlite3.Error, *(getattr(pyogrio.errors, name) for name in names))
 
 
 def _features(path: Path) -> list[dict[str, Any]]:

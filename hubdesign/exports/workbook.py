@@ -8,6 +8,7 @@ seconds.
 from __future__ import annotations
 
 import datetime
+import io
 import re
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
@@ -124,10 +125,18 @@ def write_comparison_workbook(
 def _opened(path: Path, settings: Settings) -> Iterator[_Book]:
     import xlsxwriter
 
-    options = {"strings_to_formulas": False, "strings_to_urls": False, "strings_to_numbers": False}
-    with xlsxwriter.Workbook(str(path), options) as book:
+    options = {
+        "in_memory": True,
+        "strings_to_formulas": False,
+        "strings_to_urls": False,
+        "strings_to_numbers": False,
+    }
+    content = io.BytesIO()
+    with xlsxwriter.Workbook(content, options) as book:
         book.set_properties({"title": settings.title, "created": _FIXED_DATE})
         yield _Book(book, {}, settings)
+    # Written by ourselves, so that a full disk is an OSError like any other.
+    path.write_bytes(content.getvalue())
 
 
 def _write_sheet(book: _Book, table: Table) -> None:

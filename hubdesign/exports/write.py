@@ -21,9 +21,9 @@ from hubdesign.exports.summary import (
 )
 from hubdesign.exports.tables import write_csv
 from hubdesign.exports.workbook import write_comparison_workbook, write_design_workbook
+from hubdesign.inputs import input_files
 from hubdesign.results import Results, build_results
 from hubdesign.run import Result
-from hubdesign.schema import TABLES
 
 __all__ = [
     "InputFiles",
@@ -36,7 +36,6 @@ __all__ = [
 ]
 
 INPUT_COPY = "inputs"
-_INPUT_NAMES = ("settings.toml", *(f"{name}.csv" for name in TABLES), "demand_matrix.csv")
 
 
 @dataclass(frozen=True, slots=True)
@@ -60,12 +59,7 @@ def read_inputs(path: str | Path) -> InputFiles:
 
     Read before a long solve, they are what was solved, whatever happens to the files meanwhile.
     """
-    place = Path(path)
-    if place.is_dir():
-        found = [place / name for name in _INPUT_NAMES if (place / name).is_file()]
-    else:
-        found = [place]
-    return InputFiles(place, {file.name: file.read_bytes() for file in found})
+    return InputFiles(Path(path), {file.name: file.read_bytes() for file in input_files(path)})
 
 
 def input_copy(folder: str | Path) -> Path:

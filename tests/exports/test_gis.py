@@ -256,3 +256,18 @@ def test_without_pyogrio_the_extra_is_named_and_geojson_still_works(
         export_gis(home / "hand", "gpkg", tmp_path / "out")
     assert not (tmp_path / "out").exists()
     assert "links.geojson" in export_gis(home / "hand", "geojson", tmp_path / "out")
+
+
+def test_a_fault_of_gdal_is_said_and_leaves_the_old_export(
+    home: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    pyogrio = pytest.importorskip("pyogrio")
+    export_gis(home / "hand", "gpkg", tmp_path / "out")
+
+    def fail(*_args: Any, **_kwargs: Any) -> None:
+        raise pyogrio.errors.DataSourceError("disk I/O error")
+
+    monkeypatch.setattr(pyogrio.raw, "write", fail)
+    with pytest.raises(OutputError, match=r"out: cannot be written as gpkg: disk I/O error"):
+        export_gis(home / "hand", "gpkg", tmp_path / "out")
+    assert changed_files(tmp_path / "out") == []

@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import json
 import re
+import shutil
+import subprocess
+import sys
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
@@ -15,6 +18,8 @@ from hubdesign.errors import OutputError
 from hubdesign.exports.folder import changed_files, claim_target, read_manifest
 from hubdesign.exports.write import input_copy, read_inputs, write_comparison, write_design
 from tests.exports.cases import INPUTS, comparison_of, hand_result, hostile_result, solved_result
+
+ROOT = Path(__file__).parents[2]
 
 DESIGN_FILES = {
     "itineraries.csv",
@@ -160,3 +165,38 @@ def test_a_note_of_a_comparison_stands_in_the_summary_of_its_structure(tmp_path:
     write_comparison(Comparison(full.problem, (noted, *full.entries[2:])), tmp_path / "out", INPUTS)
     summary = json.loads((tmp_path / "out" / "point-to-point" / "summary.json").read_text("utf-8"))
     assert summary["warnings"] == ["not comparable: leaves 5 units unserved"]
+
+
+@pytest.mark.parametrize("size_kb", [16, 40])
+def test_a_disk_that_fills_up_during_the_writing_is_said(tmp_path: Path, size_kb: int) -> None:
+    """A memory disk in a mount namespace of its own: too small for the tables, or for the workbook."""
+    if shutil.which("unshare") is None:
+        pytest.skip("no unshare command: a small disk cannot be mounted")
+    script = (
+        "import sys; from pathlib import Path\n"
+        "from tests.exports.cases import INPUTS, solved_result\n"
+        "from hubdesign.errors import OutputError\n"
+        "from hubdesign.exports.write import write_design\n"
+        "try:\n    write_design(solved_result(), Path(sys.argv[1]) / 'out', INPUTS)\n"
+        "except OutputError as error:\n    print(error)\n"
+        "print(*Path(sys.argv[1]).iterdir())\n"
+    )
+    mount = f'mount -t tmpfs -o size={size_kb}k none "$2" && exec "$0" -c "$1" "$2"'
+    command = [
+        "unshare",
+        "--map-root-user",
+        "--mount",
+        "sh",
+        "-c",
+        mount,
+        sys.executable,
+        script,
+        str(tmp_path),
+    ]
+    done = subprocess.run(command, capture_output=True, text=True, check=False, cwd=ROOT)
+    if done.returncode != 0 and "Traceback" not in done.stderr:
+        pytest.skip(f"a small disk cannot be mounted here: {done.stderr.strip()}")
+    assert done.returncode == 0, done.stderr
+    said, left = done.stdout.splitlines()
+    assert said == f"{tmp_path}/out: the disk is full; make room or choose another disk; nothing was written"
+    assert left == ""
