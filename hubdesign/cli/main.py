@@ -198,6 +198,37 @@ def verify(outputs: Path, as_json: bool) -> None:
             sys.exit(errors.EXIT_BAD_INPUT)
 
 
+@main.command()
+@_OUTPUTS
+@click.option(
+    "--to",
+    "to",
+    required=True,
+    type=click.Choice(["gpkg", "fgb", "kml", "shp", "geojson"]),
+    help="GeoPackage (styled), FlatGeobuf, KML, Shapefile or GeoJSON.",
+)
+@click.option(
+    "-o",
+    "--output",
+    "target",
+    type=click.Path(path_type=Path),
+    help="Folder to write to; OUTPUTS-<format> without it.",
+)
+def export(outputs: Path, to: str, target: Path | None) -> None:
+    """Hand the maps of a result to GIS software.
+
+    \b
+    Example:
+      hubdesign export outputs/islands --to gpkg
+    """
+    with told_in_words(False):
+        from hubdesign.exports.gis import export_gis
+
+        place = outputs.with_name(f"{outputs.resolve().name}-{to}") if target is None else target
+        for name in export_gis(outputs, to, place):
+            click.echo(f"wrote {place / name}")
+
+
 def _read(inputs: Path) -> tuple[Any, float]:
     """Return the problem and the seconds it took to read; warnings go to stderr."""
     import time

@@ -76,22 +76,25 @@ class Display:
 
     @contextmanager
     def shown(self) -> Iterator[Display]:
-        """Show a live picture meanwhile where the stream is a terminal."""
-        if not self.stream.isatty():
-            yield self
-            return
-        from rich.console import Console
-        from rich.live import Live
+        """Show a live picture meanwhile on a terminal; on a pipe the last state is told at the end."""
+        if self.stream.isatty():
+            from rich.console import Console
+            from rich.live import Live
 
-        console = Console(file=self.stream, highlight=False)
-        with Live(
-            console=console, get_renderable=self._picture, refresh_per_second=4, transient=True
-        ) as self.live:
-            try:
-                yield self
-            finally:
-                self.live = None if self.live is None else self.live
-        self.live = None
+            console = Console(file=self.stream, highlight=False)
+            with Live(
+                console=console, get_renderable=self._picture, refresh_per_second=4, transient=True
+            ) as live:
+                self.live = live
+                try:
+                    yield self
+                finally:
+                    self.live = None
+            return
+        yield self
+        for name, lines in self._latest.items():
+            if self._told[name] != lines[-1].seconds:
+                self.say(self._line(name, lines[-1]))
 
 
 def gap_line(lines: list[Progress], width: int = 30) -> str:
