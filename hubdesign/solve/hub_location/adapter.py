@@ -13,7 +13,7 @@ from itertools import pairwise
 
 import numpy as np
 
-from hubdesign.design import Design, Flow, Status, is_proven, relative_gap, round_bound_outward
+from hubdesign.design import Design, Flow, Status, is_proven, relative_gap
 from hubdesign.network import Network
 from hubdesign.pricing import price
 from hubdesign.problem import UNLIMITED
@@ -184,7 +184,7 @@ def to_design(
         Status.FEASIBLE, hubs=hubs, links=tuple(sorted(used)), flows=tuple(flows), allocation=allocation
     )
     value = price(network, plan).total_cost
-    bound = min(round_bound_outward(answer.bound, maximise=False, scale=value), value)
+    bound = min(answer.bound, value)  # rounded outward by the engine already
     gap = relative_gap(value, bound, value)
     proven = is_proven(gap, control.gap) or value == bound
     return plan.replace(
