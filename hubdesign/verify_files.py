@@ -17,7 +17,7 @@ from typing import Any
 from hubdesign.cells import plain_text
 from hubdesign.design import Design, Flow, Frequency, Status
 from hubdesign.errors import OutputError
-from hubdesign.exports.folder import changed_files, read_manifest
+from hubdesign.exports.folder import changed_files, read_manifest, repair
 from hubdesign.exports.write import input_copy
 from hubdesign.inputs import read_case
 from hubdesign.network import Network, build_network
@@ -63,6 +63,7 @@ def verify_folder(path: str | Path) -> FolderReport:
         The folder is no result of this tool, or a file of it cannot be read.
     """
     folder = Path(path)
+    repair(folder)
     manifest = read_manifest(folder)
     breaches = [f"{folder / name}: changed or missing since it was written" for name in changed_files(folder)]
     if breaches:

@@ -13,11 +13,15 @@ from typing import Any
 
 import pytest
 
+from hubdesign import run
 from hubdesign.comparison import Comparison
 from hubdesign.errors import OutputError
 from hubdesign.exports.folder import changed_files, claim_target, read_manifest
+from hubdesign.exports.swap import free_name, record_of
 from hubdesign.exports.write import input_copy, read_inputs, write_comparison, write_design
-from tests.exports.cases import INPUTS, comparison_of, hand_result, hostile_result, solved_result
+from hubdesign.inputs import read_case
+from hubdesign.verify_files import verify_folder
+from tests.exports.cases import HOSTILE, INPUTS, comparison_of, hand_result, hostile_result, solved_result
 
 ROOT = Path(__file__).parents[2]
 
@@ -200,3 +204,51 @@ def test_a_disk_that_fills_up_during_the_writing_is_said(tmp_path: Path, size_kb
     said, left = done.stdout.splitlines()
     assert said == f"{tmp_path}/out: the disk is full; make room or choose another disk; nothing was written"
     assert left == ""
+
+
+@pytest.fixture(scope="module")
+def case(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """Four towns whose codes and types look like formulas and tags."""
+    folder = tmp_path_factory.mktemp("case")
+    names = [name.replace('"', '""') for name in HOSTILE]
+    rows = [
+        f'=1+1,"{names[0]}",10,170,yes',
+        f'<b>&,"{names[4].split(chr(0x202E))[0]}",-5,179,no',
+        f'-2+3,"{names[3]}",0,-175,no',
+        f'@SUM,"{names[6]}",12,-170,no',
+    ]
+    (folder / "stations.csv").write_text("station,name,lat,lon,may_be_hub\n" + "\n".join(rows), "utf-8")
+    codes = [row.split(",")[0] for row in rows]
+    pairs = [(a, b) for a in codes for b in codes if a != b]
+    demand = [f"{a},{b},{30 + 9 * place},400" for place, (a, b) in enumerate(pairs)]
+    (folder / "demand.csv").write_text("origin,destination,volume,revenue\n" + "\n".join(demand), "utf-8")
+    fleet = "vehicle,capacity,speed_kmh,cost_per_hour\n+cmd,40,500,1500\n@x,90,600,2900\n"
+    (folder / "fleet.csv").write_text(fleet, "utf-8")
+    settings = '[goal]\ngoal = "most-profit"\n[solve]\ngap = 0.05\ntime_limit_s = 10\nthreads = 1\n'
+    (folder / "settings.toml").write_text(settings, "utf-8")
+    return folder
+
+
+def test_a_result_full_of_formulas_and_tags_is_recomputed_from_its_files(case: Path, tmp_path: Path) -> None:
+    result = run.design(read_case(case))
+    write_design(result, tmp_path / "out", case)
+    report = verify_folder(tmp_path / "out")
+    assert report.breaches == ()
+    assert report.figures > 300
+    assert len(result.design.links) > 2
+
+
+def test_a_finished_solve_on_one_thread_gives_the_same_bytes_twice(case: Path, tmp_path: Path) -> None:
+    for name in ("a", "b"):
+        write_design(run.design(read_case(case)), tmp_path / name, case)
+    first, second = without_times(tmp_path / "a"), without_times(tmp_path / "b")
+    assert first == second
+
+
+def test_a_reader_first_finishes_the_swap_of_a_killed_run(case: Path, tmp_path: Path) -> None:
+    write_design(run.design(read_case(case)), tmp_path / "out", case)
+    new, old = (free_name(tmp_path / "out", word) for word in ("new", "old"))
+    (tmp_path / "out").rename(new)
+    record_of(tmp_path / "out").write_text(json.dumps({"new": new.name, "old": old.name}))
+    assert verify_folder(tmp_path / "out").breaches == ()
+    assert [path.name for path in tmp_path.iterdir()] == ["out"]
