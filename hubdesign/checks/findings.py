@@ -50,10 +50,10 @@ def listed(faults: Iterable[Fault]) -> list[str]:
     return lines
 
 
-def nearest(name: str, known: Collection[str]) -> str:
-    """Return `did you mean X?` for the nearest known name, "" where none is near."""
+def nearest(name: str, known: Collection[str], likeness: float = 0.7) -> str:
+    """Return `did you mean X?` for the nearest known name, "" where none is near (`likeness` 0..1)."""
     lowered = {entry.lower(): entry for entry in known}
-    found = difflib.get_close_matches(name.lower()[:64], lowered, 1, 0.6)
+    found = difflib.get_close_matches(name.lower()[:64], lowered, 1, likeness)
     return f"did you mean {lowered[found[0]]}?" if found else ""
 
 

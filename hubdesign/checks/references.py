@@ -6,6 +6,9 @@ from hubdesign.checks.findings import nearest
 from hubdesign.checks.places import Case
 from hubdesign.errors import Fault
 
+#: Two codes of three characters that share two are this alike.
+_CODE_LIKENESS = 0.6
+
 
 def unknown_code(
     case: Case, table: str, index: int, column: str, code: str, target: str
@@ -17,5 +20,5 @@ def unknown_code(
     known = case.station_codes if target == "stations" else case.vehicle_codes
     if code in known or target in case.places.unread or code in case.places.stray.get(target, ()):
         return ()
-    label = case.places.label(target)
-    return case.row(table, index, column, f"{code} is not in {label}", nearest(code, known) or "add it there")
+    cure = nearest(code, known, _CODE_LIKENESS) or "add it there"
+    return case.row(table, index, column, f"{code} is not in {case.places.label(target)}", cure)

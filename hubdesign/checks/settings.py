@@ -54,7 +54,7 @@ def check_must_hubs_fit(case: Case) -> Iterator[Fault]:
     most = getattr(settings, name)
     must = [row.station for row in case.problem.stations if row.must_be_hub]
     if most is not None and len(must) > most and _hubs_in_force(case):
-        what = f"{most} hubs at most, but {len(must)} stations must be hubs ({', '.join(must[:5])})"
+        what = f"at most {most}, but {len(must)} stations must be hubs ({', '.join(must[:5])})"
         yield from case.setting(name, what, f"raise {name}, or set must_be_hub = no for some")
 
 

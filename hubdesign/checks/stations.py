@@ -59,7 +59,7 @@ def check_must_links_fit(case: Case) -> Iterator[Fault]:
     for i, row in enumerate(case.problem.stations):
         count = must.get(row.station, 0)
         if row.max_links is not None and count > row.max_links:
-            what = f"{row.max_links} links at most, but {count} links must be operated here"
+            what = f"at most {row.max_links} open here, but {count} links must be operated"
             yield from case.row("stations", i, "max_links", what, "raise it, or decide fewer links as must")
 
 

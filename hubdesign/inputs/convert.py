@@ -24,7 +24,9 @@ _WORDS_FOR_NO_NUMBER = ("nan", "inf", "infinity", "none", "null", "n/a", "na", "
 LARGEST = 1e15
 _LONGEST_CODE = 32
 _LONGEST_TEXT = 1000
-_NOT_IN_CODES = "/\\,;|\"'`\u2018\u2019\u201a\u201c\u201d\u201e\u00ab\u00bb\u2039\u203a"
+_QUOTES = "\"'`\u2018\u2019\u201a\u201c\u201d\u201e\u00ab\u00bb\u2039\u203a"
+_NOT_IN_CODES = "/\\,;|" + _QUOTES
+_CHARACTER_NAMES = {" ": "a blank", "\u00a0": "a no-break blank", "/": "a slash", "\\": "a backslash"}
 
 
 class BadCell(Exception):
@@ -151,7 +153,10 @@ def _in_range(value: float, cell: Cell, spec: Column | Setting) -> float:
         rule = f"{given} is negative; it must be at least 0"
     else:
         rule = f"{given} is under {low:g}"
-    raise BadCell(rule, _range_cure(value, spec))
+    cure = _range_cure(value, spec)
+    if isinstance(spec, Setting) and spec.alternatives and low is not None and high is not None:
+        cure = f"write {low:g} to {high:g}, or " + " or ".join(f'"{word}"' for word in spec.alternatives)
+    raise BadCell(rule, cure)
 
 
 def _range_cure(value: float, spec: Column | Setting) -> str:
@@ -213,8 +218,7 @@ def check_code(text: str) -> str:
         raise BadCell(f"{shown(text)} is too long for a code", f"use at most {_LONGEST_CODE} characters")
     for char in text:
         if char in _NOT_IN_CODES or char.isspace() or not char.isprintable():
-            name = "a blank" if char.isspace() and char.isprintable() else shown(char)
-            name = "a blank" if char in " \u00a0\u202f" else name
+            name = _CHARACTER_NAMES.get(char) or ("a quote" if char in _QUOTES else shown(char))
             raise BadCell(
                 f"{shown(text)} holds {name}: codes have no blank, slash, quote or separator",
                 "use letters, digits, - or _",

@@ -203,9 +203,9 @@ def _unnamed_columns(table: RawTable, where: str, findings: Findings) -> None:
 
 
 def named_columns(table: RawTable) -> dict[str, int]:
-    """Return column -> position, the planner's own and unnamed ones left out, the first of doubled ones."""
-    places: dict[str, int] = {}
-    for place, column in enumerate(table.header):
-        if column and not is_note(column):
-            places.setdefault(column, place)
-    return places
+    """Return column -> position; the planner's own, unnamed and doubled ones are left out."""
+    return {
+        column: place
+        for place, column in enumerate(table.header)
+        if column and not is_note(column) and table.header.count(column) == 1
+    }

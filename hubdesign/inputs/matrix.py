@@ -16,7 +16,10 @@ def read_matrix(raw: RawTable, findings: Findings) -> ReadTable:
     result = ReadTable("demand", raw.label, whole=raw.whole)
     if raw.header and raw.header[0] not in _CORNER:
         what = f"the first column is headed {shown(raw.header[0])}"
-        findings.fault(f"{raw.label} header", what, "head it origin, or leave it blank", "matrix corner")
+        cure = "the first column holds the origins: head it origin, or leave it blank"
+        findings.fault(f"{raw.label} header", what, cure, "matrix corner")
+        result.whole = False
+        return result
     if not raw.rows and raw.whole:
         findings.fault(raw.label, "has a header but no rows", "write a row for each origin", "empty table")
     columns = _destinations(raw, findings)

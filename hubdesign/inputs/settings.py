@@ -8,7 +8,6 @@ from dataclasses import dataclass, field
 from typing import Any
 
 from hubdesign.checks.findings import Findings, nearest
-from hubdesign.checks.places import Places
 from hubdesign.inputs.convert import BadCell, Decimals, check_code, convert
 from hubdesign.inputs.csv_files import decode, named_columns
 from hubdesign.inputs.raw import Cell, RawTable, is_blank, shown
@@ -67,7 +66,7 @@ def _toml_section(result: ReadSettings, section: str, content: Any, findings: Fi
         setting = _BY_NAME.get(section)
         cure = f"put it under [{setting.section}]" if setting else nearest(section, _BY_NAME)
         what = "stands outside any section" if section != "mode" else "is not a section: write [mode.NAME]"
-        findings.fault(f"{result.label} {shown(section)}", what, cure, "unknown setting")
+        findings.fault(f"{result.label} {_name(section)}", what, cure, "unknown setting")
         return
     if not _known_section(section):
         cure = nearest(section, _SECTIONS) or f"sections are {', '.join(_SECTIONS)} and mode.NAME"
@@ -113,6 +112,10 @@ def read_sheet(raw: RawTable, findings: Findings) -> ReadSettings:
     return result
 
 
+def _name(text: str) -> str:
+    return shown(text)[1:-1]
+
+
 def _word(cell: Cell) -> str:
     return cell.strip(" ") if isinstance(cell, str) else str(cell)
 
@@ -154,6 +157,8 @@ def _typed(value: Any, setting: Setting) -> Any:
         return UNLIMITED
     wanted = {"number": (int, float), "integer": (int,), "yesno": (bool,)}.get(setting.kind, (str,))
     if not isinstance(value, wanted) or (isinstance(value, bool) and setting.kind != "yesno"):
+        if isinstance(value, float):
+            raise BadCell(f"{value!r} is not written as a whole number", "write it without a decimal point")
         raise BadCell(f"{_shown_toml(value)} is {_type_words(value)}", f"write {_wanted_words(setting)}")
     if isinstance(value, int) and abs(value) > 10**300:
         raise BadCell("the number is too large to be data (at most 1e15 is read)", "check it")
@@ -204,12 +209,3 @@ def _wanted_words(setting: Setting) -> str:
         setting.kind, 'a text in "quotes"'
     )
     return words + "".join(f', or "{word}"' for word in setting.alternatives)
-
-
-def settings_places(result: ReadSettings) -> Places:
-    """Return the places that name this file or sheet."""
-    return Places(
-        {"settings": result.label},
-        bad=frozenset(("settings", 0, n) for n in result.bad),
-        given=frozenset(result.values),
-    )

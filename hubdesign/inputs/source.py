@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import stat
-from collections.abc import Callable
+from collections.abc import Callable, Collection
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -64,7 +64,7 @@ def _gather_folder(folder: Path, findings: Findings) -> Gathered:
     except OSError as error:
         findings.fault(folder.name, f"cannot be read ({error.strerror})", "check its rights", "unreadable")
         return result
-    _check_names(names, findings)
+    misspelt = _check_names(names, findings)
     raw: dict[str, RawTable] = {}
     for name in (*TABLES, MATRIX):
         label = f"{name}.csv"
@@ -80,15 +80,16 @@ def _gather_folder(folder: Path, findings: Findings) -> Gathered:
         data = read_bytes(folder / SETTINGS_FILE, SETTINGS_FILE, findings)
         if data is not None:
             result.settings = read_toml(SETTINGS_FILE, data, findings)
-    else:
+    elif SETTINGS_FILE not in misspelt:
         findings.warn(SETTINGS_FILE, "is missing: every setting has its default", "", "no settings")
-    _require(raw, names, lambda name: f"{name}.csv", findings)
+    _require(raw, names, lambda name: f"{name}.csv", findings, misspelt)
     _read_all(raw, result, findings)
     return result
 
 
-def _check_names(names: list[str], findings: Findings) -> None:
-    """Say which tables are not read: a misspelt name must not pass for an absent table."""
+def _check_names(names: list[str], findings: Findings) -> set[str]:
+    """Say which files are not read; return the names that were misspelt: they do not count as absent."""
+    misspelt: set[str] = set()
     wanted = [f"{name}.csv" for name in (*TABLES, MATRIX)] + [SETTINGS_FILE]
     for name in names:
         if name in wanted or not name.lower().endswith((".csv", ".toml", ".tsv", ".txt", ".xlsx", ".xls")):
@@ -99,8 +100,10 @@ def _check_names(names: list[str], findings: Findings) -> None:
         cure = nearest(name, absent)
         if cure and name.lower().endswith((".csv", ".toml")):
             findings.fault(name, "is not an input table", cure, "unknown table")
+            misspelt.add(cure.removeprefix("did you mean ").rstrip("?"))
         else:
             findings.warn(name, "is not an input table and was not read", "", "unread file")
+    return misspelt
 
 
 def _gather_workbook(path: Path, findings: Findings) -> Gathered:
@@ -125,15 +128,20 @@ def _gather_workbook(path: Path, findings: Findings) -> Gathered:
 
 
 def _require(
-    raw: dict[str, RawTable], names: list[str], label: Callable[[str], str], findings: Findings
+    raw: dict[str, RawTable],
+    names: list[str],
+    label: Callable[[str], str],
+    findings: Findings,
+    misspelt: Collection[str] = (),
 ) -> None:
-    if "stations" not in raw:
+    """Ask for stations and for demand, one way or the other."""
+    if "stations" not in raw and label("stations") not in misspelt:
         cure = _hint(names) or "it holds a row for each station"
         findings.fault(label("stations"), "is missing", cure, "missing table")
     if "demand" in raw and MATRIX in raw:
         what = f"stands beside {label('demand')}"
         findings.fault(label(MATRIX), what, "keep one of them", "missing table")
-    if "demand" not in raw and MATRIX not in raw:
+    if not {"demand", MATRIX} & set(raw) and not {label("demand"), label(MATRIX)} & set(misspelt):
         cure = _hint(names) or f"it holds a row for each origin and destination (or write {label(MATRIX)})"
         findings.fault(label("demand"), "is missing", cure, "missing table")
 

@@ -61,7 +61,7 @@ def read_columns(raw: RawTable, table: Table, findings: Findings) -> ReadTable:
     columns = [(column, places[column.name]) for column in table.columns if column.name in places]
     absent = [column for column in table.columns if column.name not in places]
     missing = {column.name: _STAND_IN if column.required else column.default for column in absent}
-    missing_required = {column.name for column in absent if column.required}
+    missing_bad = {column.name for column in absent if column.required or column.name in raw.header}
     _, keys = _KEYS[table.name]
     present_keys = [key for key in keys if key in places]
     decimals = Decimals(raw.comma_allowed)
@@ -72,7 +72,7 @@ def read_columns(raw: RawTable, table: Table, findings: Findings) -> ReadTable:
         if len(present_keys) < len(keys) or any(key in faulty for key in keys):
             result.stray.update(str(row.cells[places[key]]).strip(" ") for key in present_keys)
             continue
-        result.bad.update((len(result.records), column) for column in faulty | missing_required)
+        result.bad.update((len(result.records), column) for column in faulty | missing_bad)
         result.records.append(record)
         result.places.append((row.number, ""))
     if not all(key in places for key in keys):
@@ -96,7 +96,7 @@ def _check_header(raw: RawTable, table: Table, places: dict[str, int], findings:
     where = f"{raw.label} header"
     known = {column.name for column in table.columns}
     unknown = [name for name in places if name not in known]
-    absent = [column.name for column in table.columns if column.required and column.name not in places]
+    absent = [column.name for column in table.columns if column.required and column.name not in raw.header]
     for name in unknown:
         cure = nearest(name, known - set(places)) or "a column whose name begins with note is your own"
         findings.fault(where, f"the column {shown(name)} is not known", cure, "unknown column")

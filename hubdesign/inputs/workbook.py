@@ -13,7 +13,7 @@ from collections.abc import Collection
 from typing import Any
 from xml.etree import ElementTree
 
-from hubdesign.checks.findings import Findings, nearest, some
+from hubdesign.checks.findings import Findings, nearest
 from hubdesign.inputs.csv_files import fit_to_header
 from hubdesign.inputs.raw import Cell, RawTable, is_blank, is_note, shown
 
@@ -33,39 +33,36 @@ def read_workbook(label: str, data: bytes, names: Collection[str], findings: Fin
     Sheets that begin with `note` are the planner's own; others are faults. A workbook that cannot be opened
     is a fault and gives no table.
     """
-    from python_calamine import CalamineError, load_workbook
-
     problem = _unreadable(data)
     if problem:
         findings.fault(label, *problem, "workbook")
         return {}
-    tables: dict[str, RawTable] = {}
     try:
-        book = load_workbook(io.BytesIO(data))
-        sheets = list(book.sheet_names)
-        blanks = _silent_blanks(data)
-        for sheet in sheets:
-            if sheet in names:
-                table = _sheet(book, sheet, blanks.get(sheet, {}), findings)
-                if table is not None:
-                    tables[sheet] = table
-            elif not is_note(sheet):
-                cure = (
-                    nearest(sheet, set(names) - set(sheets))
-                    or "a sheet whose name begins with note is your own"
-                )
-                findings.fault(f"sheet {sheet}", "is not an input table", cure, "unknown table")
-    except (
-        CalamineError,
-        zipfile.BadZipFile,
-        ElementTree.ParseError,
-        KeyError,
-        EOFError,
-        ValueError,
-    ) as error:
-        what = f"cannot be read as a workbook ({str(error)[:100] or type(error).__name__}); it is damaged"
+        return _read_sheets(data, names, findings)
+    except BaseException as error:
+        # A damaged archive raises whatever its readers trip over; a panic of the reader is no Exception.
+        if not isinstance(error, Exception) and type(error).__name__ != "PanicException":
+            raise
+        what = f"cannot be read as a workbook ({shown(str(error) or type(error).__name__)}); it is damaged"
         findings.fault(label, what, "open and save it again as .xlsx", "workbook")
         return {}
+
+
+def _read_sheets(data: bytes, names: Collection[str], findings: Findings) -> dict[str, RawTable]:
+    from python_calamine import load_workbook
+
+    tables: dict[str, RawTable] = {}
+    book = load_workbook(io.BytesIO(data))
+    sheets = list(book.sheet_names)
+    blanks = _silent_blanks(data)
+    for sheet in sheets:
+        if sheet in names:
+            table = _sheet(book, sheet, blanks.get(sheet, {}), findings)
+            tables[sheet] = table or RawTable(sheet, f"sheet {sheet}", [], [], whole=False)
+        elif not is_note(sheet):
+            own = "a sheet whose name begins with note is your own"
+            cure = nearest(sheet, set(names) - set(sheets)) or own
+            findings.fault(f"sheet {shown(sheet)[1:-1]}", "is not an input table", cure, "unknown table")
     return tables
 
 
@@ -80,7 +77,7 @@ def _unreadable(data: bytes) -> tuple[str, str] | None:
     try:
         with zipfile.ZipFile(io.BytesIO(data)) as archive:
             members = archive.infolist()
-    except (zipfile.BadZipFile, ValueError, OSError):
+    except Exception:  # whatever the damage makes it raise
         return "is a damaged .xlsx workbook (cut short, perhaps)", "save or copy it again"
     if any(member.flag_bits & 1 for member in members):
         return "is encrypted", "save it without a password"
@@ -102,19 +99,19 @@ def _sheet(book: Any, name: str, blanks: dict[tuple[int, int], str], findings: F
     if merged:
         first = f"{_letters(merged[0][0][1])}{merged[0][0][0] + 1}"
         findings.fault(label, f"has merged cells (at {first})", "unmerge them and fill each", "merged cells")
+        return None
     grid: list[list[Cell]] = sheet.to_python(skip_empty_area=False)
     records = [(number, row) for number, row in enumerate(grid, 1) if any(not is_blank(cell) for cell in row)]
     if not records:
         findings.fault(label, "is empty", "write a header and a row for each entry", "empty table")
         return None
-    header_row = records[0][0]
-    _say_blanks(label, blanks, header_row, findings)
+    _say_blanks(label, blanks, findings)
     table = RawTable(name, label, [], [])
     fit_to_header(table, records, findings, check_count=False)
     return table
 
 
-def _say_blanks(label: str, blanks: dict[tuple[int, int], str], header_row: int, findings: Findings) -> None:
+def _say_blanks(label: str, blanks: dict[tuple[int, int], str], findings: Findings) -> None:
     for (row, column), what in sorted(blanks.items()):
         where = f"{label} row {row}, column {_letters(column)}"
         cure = "open the workbook in a spreadsheet and save it" if "formula" in what else "repair its formula"
@@ -177,8 +174,3 @@ def _sheet_parts(archive: zipfile.ZipFile) -> dict[str, str]:
         if part in archive.namelist():
             parts[entry.get("name", "")] = part
     return parts
-
-
-def sheet_words(missing: Collection[str]) -> str:
-    """Return the words for missing sheets."""
-    return f"has no sheet {some(missing)}"
