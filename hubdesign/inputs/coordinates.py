@@ -5,8 +5,8 @@ from __future__ import annotations
 import dataclasses
 from typing import Any
 
-from hubdesign.checks.findings import Findings, nearest
-from hubdesign.checks.places import Case, Places
+from hubdesign.checks.findings import Findings
+from hubdesign.checks.places import Places
 from hubdesign.problem import Problem, Station
 
 _RULE = "fill coordinates"
@@ -27,19 +27,16 @@ def fill_coordinates(problem: Problem, places: Places, findings: Findings) -> Pr
             _RULE,
         )
         return problem
-    case, stations = Case(problem, places), list(problem.stations)
+    stations = list(problem.stations)
     for i in blank:
         row = stations[i]
         found = airports.get(row.station)
         where = places.at("stations", i, "lat", f"station {row.station}")
         if found is None:
-            cure = nearest(row.station, [row.station.upper()] if row.station.upper() in airports else [])
-            what = f"blank, and {row.station} is no IATA code of the airport table"
-            findings.fault(where, what, cure or "write lat and lon", _RULE)
-            continue
+            continue  # a fault only where a length is needed; the rule of lengths says so
         stations[i] = dataclasses.replace(row, lat=float(found["lat"]), lon=float(found["lon"]))
         findings.warn(where, f"filled in: {_said(stations[i], found)}", "", _RULE)
-    return case.problem.replace(stations=tuple(stations))
+    return problem.replace(stations=tuple(stations))
 
 
 def _said(row: Station, found: dict[str, Any]) -> str:
