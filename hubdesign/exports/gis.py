@@ -157,7 +157,10 @@ def _write_package(pyogrio: ModuleType, folder: Path, layers: list[Layer]) -> No
 
 def _write_flatgeobuf(pyogrio: ModuleType, folder: Path, layers: list[Layer]) -> None:
     for layer in layers:
-        _write_layer(pyogrio, folder / f"{layer.name}.fgb", layer, "FlatGeobuf", layer.name)
+        # The format's index takes no feature without a place.
+        placed = all(feature["geometry"] is not None for feature in layer.features)
+        options = {} if placed else {"layer_options": {"SPATIAL_INDEX": "NO"}}
+        _write_layer(pyogrio, folder / f"{layer.name}.fgb", layer, "FlatGeobuf", layer.name, **options)
 
 
 def _write_kml(pyogrio: ModuleType, folder: Path, layers: list[Layer]) -> None:

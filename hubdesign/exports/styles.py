@@ -171,7 +171,7 @@ def _point_qml() -> str:
         '<labeling type="simple"><settings calloutType="simple"><text-style fieldName="station"'
         ' isExpression="0" fontSize="8" fontSizeUnit="Point" textColor="34,34,34,255">'
         '<text-buffer bufferDraw="1" bufferSize="0.6" bufferSizeUnits="MM" bufferColor="255,255,255,255"/>'
-        '</text-style><placement placement="6" dist="1" distUnits="MM"/></settings></labeling>'
+        '</text-style><placement placement="6" dist="1.8" distUnits="MM"/></settings></labeling>'
     )
     return _qml({value: label for value, (label, _, _) in STATION_ROLES.items()}, symbols, labels)
 

@@ -7,9 +7,11 @@ from functools import cache
 from pathlib import Path
 
 from hubdesign.comparison import Comparison, Entry
-from hubdesign.design import Status
+from hubdesign.design import Design, Flow, Status
 from hubdesign.exports.write import InputFiles
-from hubdesign.problem import Problem
+from hubdesign.network import build_network
+from hubdesign.pricing import price
+from hubdesign.problem import Demand, ListedLink, Problem, Settings, Station
 from hubdesign.results import Results, build_results
 from hubdesign.run import Result
 from tests.results.cases import hand_worked, random_case, solved
@@ -36,6 +38,19 @@ def hand_result() -> Result:
     """Return the hand-worked design."""
     network, design, bill = hand_worked()
     return Result(network.problem, network, design, bill, ("a warning <b>",), 0.5, 0.4)
+
+
+def placeless_result() -> Result:
+    """Return a design of two stations without coordinates and without a fleet."""
+    problem = Problem(
+        stations=(Station("A"), Station("B")),
+        demands=(Demand("A", "B", 4.0),),
+        links=(ListedLink("A", "B", distance_km=10.0),),
+        settings=Settings(links="listed", unit_cost_per_km=1.0),
+    )
+    network = build_network(problem)
+    design = Design(Status.PROVEN, 40.0, 40.0, links=(0,), flows=(Flow(0, (0,), 1.0),))
+    return Result(problem, network, design, price(network, design))
 
 
 @cache

@@ -20,7 +20,15 @@ from hubdesign.exports.folder import changed_files, read_manifest
 from hubdesign.exports.gis import FORMATS, export_gis, short_names
 from hubdesign.exports.styles import volume_classes
 from hubdesign.exports.write import write_comparison, write_design
-from tests.exports.cases import HOSTILE, INPUTS, comparison_of, hand_result, hostile_result, solved_result
+from tests.exports.cases import (
+    HOSTILE,
+    INPUTS,
+    comparison_of,
+    hand_result,
+    hostile_result,
+    placeless_result,
+    solved_result,
+)
 
 pytest.importorskip("pyogrio", reason="pyogrio is not installed (the gis extra)")
 needs_gdal = pytest.mark.skipif(
@@ -181,6 +189,16 @@ def test_every_link_falls_in_exactly_one_rule_of_its_style(home: Path, tmp_path:
     for link in links:
         told = link["properties"]
         assert sum(told["role"] == role and low <= told["volume"] < high for role, low, high in limits) == 1
+
+
+@needs_gdal
+@pytest.mark.parametrize("to", FORMATS)
+def test_what_has_no_place_keeps_its_row(home: Path, tmp_path: Path, to: str) -> None:
+    write_design(placeless_result(), tmp_path / "design", INPUTS)
+    export_gis(tmp_path / "design", to, tmp_path / to)
+    for layer, count in (("stations", 2), ("links", 1)):
+        features = by_gdal(tmp_path / to / FILES[to].format(layer), layer)
+        assert [feature["geometry"] for feature in features] == [None] * count
 
 
 def test_classes_of_volume_leave_no_gap() -> None:

@@ -15,13 +15,24 @@ import pytest
 
 from hubdesign import run
 from hubdesign.comparison import Comparison
+from hubdesign.design import Design, Status
 from hubdesign.errors import OutputError
 from hubdesign.exports.folder import changed_files, claim_target, read_manifest
+from hubdesign.exports.gis import FORMATS, export_gis
 from hubdesign.exports.swap import free_name, record_of
 from hubdesign.exports.write import input_copy, read_inputs, write_comparison, write_design
 from hubdesign.inputs import read_case
+from hubdesign.pricing import price
 from hubdesign.verify_files import verify_folder
-from tests.exports.cases import HOSTILE, INPUTS, comparison_of, hand_result, hostile_result, solved_result
+from tests.exports.cases import (
+    HOSTILE,
+    INPUTS,
+    comparison_of,
+    hand_result,
+    hostile_result,
+    placeless_result,
+    solved_result,
+)
 
 ROOT = Path(__file__).parents[2]
 
@@ -252,3 +263,20 @@ def test_a_reader_first_finishes_the_swap_of_a_killed_run(case: Path, tmp_path: 
     record_of(tmp_path / "out").write_text(json.dumps({"new": new.name, "old": old.name}))
     assert verify_folder(tmp_path / "out").breaches == ()
     assert [path.name for path in tmp_path.iterdir()] == ["out"]
+
+
+def test_a_design_that_serves_nothing_is_written_like_any_other(tmp_path: Path) -> None:
+    empty = Design(Status.PROVEN, objective=-625.0, bound=-625.0)
+    result = hand_result()
+    result = replace(result, design=empty, bill=price(result.network, empty))
+    write_design(result, tmp_path / "out", INPUTS)
+    links = json.loads((tmp_path / "out" / "links.geojson").read_text("utf-8"))
+    assert links == {"type": "FeatureCollection", "features": []}
+    for to in FORMATS:
+        export_gis(tmp_path / "out", to, tmp_path / to)
+
+
+def test_a_design_without_a_fleet_and_without_coordinates_is_written_like_any_other(tmp_path: Path) -> None:
+    write_design(placeless_result(), tmp_path / "out", INPUTS)
+    assert (tmp_path / "out" / "vehicles.csv").read_text("utf-8").count("\n") == 1
+    assert "bbox" not in json.loads((tmp_path / "out" / "links.geojson").read_text("utf-8"))

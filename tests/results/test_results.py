@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from itertools import pairwise
 
 import numpy as np
 import pytest
@@ -294,3 +295,34 @@ def test_a_table_turns_no_figure_into_a_blank() -> None:
     assert table.values("c") == [None, "x"]
     with pytest.raises(ValueError, match="not in tuple"):
         table.values("d")
+
+
+def test_a_design_that_serves_nothing_has_whole_if_empty_tables() -> None:
+    network = build_network(HAND)
+    design = Design(Status.PROVEN, objective=-625.0, bound=-625.0)
+    results = build_results(network, design, price(network, design))
+    assert results.links.rows == results.itineraries.rows == results.progress.rows == ()
+    assert len(results.unserved.rows) == 5
+    assert {row["role"] for row in results.stations.records()} == {"not served"}
+    assert results.vehicles.records()[0]["used"] == 0
+    assert results.totals["volume_carried"] == 0.0
+    ratios = ("load_factor", "stage_length_km", "circuity", "unit_cost_per_unit", "yield_per_volume_km")
+    assert [results.totals[name] for name in ratios] == [None] * 5
+
+
+def test_an_itinerary_of_many_legs_is_told_whole() -> None:
+    codes = "ABCDEF"
+    problem = Problem(
+        stations=tuple(Station(code, may_be_hub=True, transfer_cost=1.0) for code in codes),
+        demands=(Demand("A", "F", 2.0),),
+        links=tuple(ListedLink(a, b, direction="one-way", distance_km=7.0) for a, b in pairwise(codes)),
+        settings=Settings(links="listed", max_transfers=UNLIMITED, unit_cost_per_km=1.0),
+    )
+    network = build_network(problem)
+    design = Design(
+        Status.PROVEN, 78.0, 78.0, (1, 2, 3, 4), tuple(range(5)), flows=(Flow(0, tuple(range(5)), 1.0),)
+    )
+    results = build_results(network, design, price(network, design))
+    (row,) = results.itineraries.records()
+    assert (row["stations"], row["transfers"], row["distance_km"]) == ("A B C D E F", 4, 35.0)
+    assert row["cost"] == results.costs["total"] == 2 * 35 + 2 * 4
