@@ -273,7 +273,7 @@ def _said_of(place: Path) -> Iterator[None]:
             what = f"may not be written ({error.strerror}: {error.filename}); choose another folder"
         else:
             what = f"cannot be written ({error})"
-        kept = "; the old result is kept" if place.exists() else "; nothing was written"
+        kept = "; the old result is kept" if (place / MANIFEST).exists() else "; nothing was written"
         raise OutputError(f"{place}: {what}{kept}") from error
 
 

@@ -12,7 +12,14 @@ from typing import Any
 from hubdesign.design import Design
 from hubdesign.network import Network
 from hubdesign.pricing import Bill
-from hubdesign.results.operation import tabulate_links, tabulate_stations, tabulate_vehicles
+from hubdesign.results.operation import (
+    STATION_COLUMNS,
+    VEHICLE_COLUMNS,
+    link_columns,
+    tabulate_links,
+    tabulate_stations,
+    tabulate_vehicles,
+)
 from hubdesign.results.summary import (
     COST_COLUMNS,
     INVESTMENT_COLUMNS,
@@ -26,11 +33,19 @@ from hubdesign.results.summary import (
 )
 from hubdesign.results.table import Cell, Column, Table, build_table
 from hubdesign.results.travel import trace_travel
-from hubdesign.results.volume import tabulate_itineraries, tabulate_progress, tabulate_unserved
+from hubdesign.results.volume import (
+    ITINERARY_COLUMNS,
+    PROGRESS_COLUMNS,
+    UNSERVED_COLUMNS,
+    tabulate_itineraries,
+    tabulate_progress,
+    tabulate_unserved,
+)
 
 __all__ = [
     "COST_COLUMNS",
     "INVESTMENT_COLUMNS",
+    "TABLE_COLUMNS",
     "TOTAL_COLUMNS",
     "Cell",
     "Column",
@@ -41,6 +56,17 @@ __all__ = [
     "objective_unit",
     "settings_in_force",
 ]
+
+
+#: Columns of every table, for documentation; the links have a frequency column for each vehicle type.
+TABLE_COLUMNS: dict[str, tuple[Column, ...]] = {
+    "links": link_columns(["<vehicle>"]),
+    "stations": STATION_COLUMNS,
+    "vehicles": VEHICLE_COLUMNS,
+    "itineraries": ITINERARY_COLUMNS,
+    "unserved": UNSERVED_COLUMNS,
+    "progress": PROGRESS_COLUMNS,
+}
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -49,16 +51,11 @@ _LINK_FIGURES = (
 )
 
 
-def link_columns(network: Network) -> tuple[Column, ...]:
+def link_columns(vehicles: Sequence[str]) -> tuple[Column, ...]:
     """Return the columns of the table of links: a frequency for each vehicle type."""
     by_type = tuple(
-        Column(
-            f"frequency_{vehicle.vehicle}",
-            "integer",
-            "departures each way per period",
-            f"of {vehicle.vehicle}",
-        )
-        for vehicle in network.problem.vehicles
+        Column(f"frequency_{vehicle}", "integer", "departures each way per period", f"of {vehicle}")
+        for vehicle in vehicles
     )
     return (*_LINK_ENDS, *by_type, *_LINK_FIGURES)
 
@@ -110,7 +107,7 @@ def tabulate_links(network: Network, design: Design, bill: Bill, travel: Travel)
         link.setup_cost[opened],
         trips["co2_kg"][opened],
     ]
-    return build_table("links", link_columns(network), values)
+    return build_table("links", link_columns([row.vehicle for row in network.problem.vehicles]), values)
 
 
 def _link_role(tail_is_hub: bool, head_is_hub: bool) -> str:

@@ -251,37 +251,64 @@ def test_a_full_disk_met_while_the_files_are_written_is_said(target):
     assert read_result(target) == "first"
 
 
-def test_a_disk_that_is_really_full_keeps_the_old_result(tmp_path):
-    """A memory disk of 128 kB in a mount namespace of its own."""
-    disk = tmp_path / "disk"
-    disk.mkdir()
-    script = f"""
-import sys; sys.path.insert(0, {str(RUNS.parent)!r})
-from pathlib import Path
-from hubdesign.errors import OutputError
-from hubdesign.exports.folder import claim_target
-from swap_runs import state_of, write_result
-target = Path({str(disk)!r}) / "result"
-write_result(target, "old")
-try:
-    with claim_target(target) as claim, claim.new_result("design") as new:
-        (new / "big").write_bytes(bytes(1_000_000))
-except OutputError as error:
-    print(error)
-print(state_of(target), sorted(entry.name for entry in target.parent.iterdir()))
-"""
-    mount = f'mount -t tmpfs -o size=128k none "{disk}" && exec "$0" -c "$1"'
-    command = ["unshare", "--map-root-user", "--mount", "sh", "-c", mount, sys.executable, script]
+def on_a_small_disk(disk, code):
+    """Run `code` with a memory disk of 128 kB at `disk`, in a mount namespace of its own; return its lines."""
     if shutil.which("unshare") is None:
         pytest.skip("no unshare command: a small disk cannot be mounted")
+    disk.mkdir()
+    head = (
+        f"import os, subprocess, sys; sys.path.insert(0, {str(RUNS.parent)!r})\n"
+        "from pathlib import Path\nfrom hubdesign.errors import OutputError\n"
+        "from hubdesign.exports.folder import claim_target\nfrom swap_runs import state_of, write_result\n"
+        f"disk = Path({str(disk)!r}); target = disk / 'result'\nwrite_result(target, 'old')\n"
+    )
+    mount = 'mount -t tmpfs -o size=128k none "$2" && exec "$0" -c "$1"'
+    command = [
+        "unshare",
+        "--map-root-user",
+        "--mount",
+        "sh",
+        "-c",
+        mount,
+        sys.executable,
+        head + code,
+        str(disk),
+    ]
     done = subprocess.run(command, capture_output=True, text=True, check=False)
     if done.returncode != 0 and "Traceback" not in done.stderr:
         pytest.skip(f"a small disk cannot be mounted here: {done.stderr.strip()}")
     assert done.returncode == 0, done.stderr
-    said, state = done.stdout.splitlines()
+    return done.stdout.splitlines()
+
+
+def test_a_disk_that_is_really_full_keeps_the_old_result(tmp_path):
+    code = (
+        "try:\n"
+        "    with claim_target(target) as claim, claim.new_result('design') as new:\n"
+        "        (new / 'big').write_bytes(bytes(1_000_000))\n"
+        "except OutputError as error:\n    print(error)\n"
+        "print(state_of(target), sorted(entry.name for entry in disk.iterdir()))\n"
+    )
+    said, state = on_a_small_disk(tmp_path / "disk", code)
     assert "the disk is full" in said
     assert "the old result is kept" in said
     assert state == "old ['result']"
+
+
+def test_a_disk_that_is_really_read_only_is_said_before_any_work(tmp_path):
+    code = (
+        "subprocess.run(['mount', '-o', 'remount,ro', str(disk)], check=True)\n"
+        "for place in (target, disk / 'new'):\n"
+        "    try:\n"
+        "        with claim_target(place):\n            print('work')\n"
+        "    except OutputError as error:\n        print(error)\n"
+        "print(state_of(target))\n"
+    )
+    old, new, state = on_a_small_disk(tmp_path / "disk", code)
+    assert "may not be written (Read-only file system" in old
+    assert old.endswith("the old result is kept")
+    assert new.endswith("nothing was written")
+    assert state == "old"
 
 
 def test_a_place_that_may_not_be_written_is_said(target, monkeypatch):

@@ -12,7 +12,7 @@ from hubdesign.design import Design, Flow, Status
 from hubdesign.network import build_network
 from hubdesign.pricing import price
 from hubdesign.problem import UNLIMITED, Demand, ListedLink, Problem, Settings, Station
-from hubdesign.results import Results, build_results
+from hubdesign.results import TABLE_COLUMNS, Results, build_results
 from hubdesign.results.table import Column, build_table
 from hubdesign.results.volume import LEFT_BY_PLAN, NO_ITINERARY, has_itinerary
 from tests.results.cases import HAND, hand_worked, random_case, solved
@@ -326,3 +326,10 @@ def test_an_itinerary_of_many_legs_is_told_whole() -> None:
     (row,) = results.itineraries.records()
     assert (row["stations"], row["transfers"], row["distance_km"]) == ("A B C D E F", 4, 35.0)
     assert row["cost"] == results.costs["total"] == 2 * 35 + 2 * 4
+
+
+def test_the_documented_columns_are_those_of_the_tables(hand: Results) -> None:
+    for table in hand.tables:
+        documented = [column.name.replace("<vehicle>", "prop") for column in TABLE_COLUMNS[table.name]]
+        assert list(table.header) == documented
+        assert all(column.meaning for column in table.columns)
