@@ -252,7 +252,7 @@ def test_a_full_disk_met_while_the_files_are_written_is_said(target):
 
 
 def on_a_small_disk(disk, code):
-    """Run `code` with a memory disk of 128 kB at `disk`, in a mount namespace of its own; return its lines."""
+    """Run `code` with a memory disk of 128 kB at `disk`, in its own mount namespace; return its lines."""
     if shutil.which("unshare") is None:
         pytest.skip("no unshare command: a small disk cannot be mounted")
     disk.mkdir()
