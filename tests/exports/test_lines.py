@@ -3,7 +3,9 @@
 import itertools
 import math
 
+import numpy as np
 import pytest
+import shapely
 from geographiclib.geodesic import Geodesic
 from hypothesis import example, given, settings
 from hypothesis import strategies as st
@@ -187,6 +189,18 @@ def test_cutting_westwards_and_at_a_vertex_leaves_no_empty_part():
     ]
     assert _cut_at_antimeridian([(180.0, 1.0), (190.0, 2.0)]) == [((-180.0, 1.0), (-170.0, 2.0))]
     assert _cut_at_antimeridian([(170.0, 1.0), (180.0, 2.0)]) == [((170.0, 1.0), (180.0, 2.0))]
+
+
+@pytest.mark.parametrize("ends", FIJI + [(61.2, 149.9, 45.0, -120.0), (-33.9, 151.2, -12.0, -77.1)])
+def test_the_crossing_is_where_another_library_finds_it(ends):
+    antimeridian = pytest.importorskip("antimeridian", reason="the antimeridian package is not installed")
+    line = trace_line("geodesic", *ends)
+    assert len(line.parts) == 2
+    uncut = shapely.LineString([*line.parts[0][:-1], *line.parts[1][1:]])
+    first, second = antimeridian.fix_line_string(uncut, great_circle=True).geoms
+    for part, found in ((line.parts[0], first), (line.parts[1], second)):
+        # On a steep line 50 m aside are several times as much along the antimeridian.
+        assert np.asarray(part) == pytest.approx(np.asarray(found.coords), abs=2e-3)
 
 
 def test_a_line_over_the_pole_is_split_there_and_boxed_to_it():
