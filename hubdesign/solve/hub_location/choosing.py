@@ -2,7 +2,8 @@
 
     min sum_k fixed_k x_kk + sum_ik own_ik x_ik + sum_i eta_i
     subject to   sum_k x_ik = 1;   x_ik <= x_kk;   hubs_min <= sum_k x_kk <= hubs_max;
-        sum_i load_i x_ik <= capacity_k x_kk;   eta_i >= G_c x  for each cut c of owner i (:mod:`pairing`)
+        sum_i load_i x_ik <= capacity_k x_kk, and its covers (:mod:`covers`);
+        eta_i >= G_c x  for each cut c of owner i (:mod:`pairing`)
 
 (x_kk: the station of hub k belongs to itself.) HiGHS proposes multipliers: lambda >= 0 for the cuts, scaled
 to sum to 1 per owner, mu >= 0 for the capacities, any v for the assignments. By weak (Lagrangian) duality
@@ -11,6 +12,7 @@ to sum to 1 per owner, mu >= 0 for the capacities, any v for the assignments. By
     c_ik = own_ik + sum_c lambda_c G_c,ik + mu_k load_i,
     r_k = fixed_k - mu_k capacity_k + c_kk - v_k - sum over i other than k's station of max(0, v_i - c_ik)
 
+(a cover row with multiplier nu counts as a capacity row with loads 0 or 1)
 for every allocation, since ``(c_ik - v_i) x_ik >= -max(0, v_i - c_ik) x_kk``. The minimum over the allowed
 hub vectors is a sort (:func:`master.bound_over`); an allocation x_ik = 1 costs at least the bound with hub k
 open plus ``max(0, c_ik - v_i)``. Capacities may be broken in HiGHS at a price, so that it always answers.
@@ -25,6 +27,7 @@ import scipy.sparse as sp
 
 from hubdesign.solve.highs import new_highs
 from hubdesign.solve.hub_location.allocation import Choice
+from hubdesign.solve.hub_location.covers import Cover, drop_what_overflows, fewest_hubs
 from hubdesign.solve.hub_location.instance import Bools, Floats, Ints
 from hubdesign.solve.hub_location.master import Bound, Domain, bound_over
 
@@ -58,6 +61,8 @@ def settle(choice: Choice, left: Left) -> Left | None:
     lower, upper = left.domain.lower.copy(), left.domain.upper.copy()
     allowed = left.allowed.copy()
     places = np.arange(len(lower))
+    capped = bool(np.isfinite(choice.capacity).any())
+    fewest = left.domain.hubs_min
     while True:
         before = (lower.sum(), upper.sum(), allowed.sum())
         allowed[:, upper < 0.5] = False
@@ -65,14 +70,20 @@ def settle(choice: Choice, left: Left) -> Left | None:
         opened = lower > 0.5
         own = allowed[choice.hubs[opened]] & (places == places[opened][:, None])
         allowed[choice.hubs[opened]] = own
+        if capped and not drop_what_overflows(choice, allowed):
+            return None
         only = allowed.sum(axis=1) == 1
         lower[allowed[only].any(axis=0)] = 1.0
         if (lower > upper).any() or not allowed.any(axis=1).all():
             return None
-        if lower.sum() > left.domain.hubs_max or upper.sum() < left.domain.hubs_min:
+        needed = fewest_hubs(choice.capacity, lower > 0.5, upper > 0.5, float(choice.load.sum()))
+        if needed is None:
+            return None
+        fewest = max(fewest, needed)
+        if max(lower.sum(), fewest) > left.domain.hubs_max or upper.sum() < fewest:
             return None
         if before == (lower.sum(), upper.sum(), allowed.sum()):
-            return Left(Domain(lower, upper, left.domain.hubs_min, left.domain.hubs_max), allowed)
+            return Left(Domain(lower, upper, fewest, left.domain.hubs_max), allowed)
 
 
 class AllocationMaster:
@@ -86,6 +97,7 @@ class AllocationMaster:
         self.total_load = max(float(choice.load.sum()), 1e-300)
         self.owners: list[int] = []
         self.cuts: list[Floats] = []
+        self.covers: list[Cover] = []
         self._idle: list[int] = []
         self._build(left)
 
@@ -102,9 +114,12 @@ class AllocationMaster:
         self._lp.setOptionValue("dual_feasibility_tolerance", 1e-9)
         self._lp.passModel(_highs_lp(cost, lower, upper, rows, low, high))
         self._base = len(low)
-        owners, cuts = self.owners, self.cuts
-        self.owners, self.cuts, self._idle = [], [], []
+        owners, cuts, covers = self.owners, self.cuts, self.covers
+        self.owners, self.cuts, self.covers, self._idle = [], [], [], []
+        self._cut_rows: list[int] = []
+        self._cover_rows: list[int] = []
         self._append(owners, cuts)
+        self.add_covers(covers)
 
     def _fixed_rows(self, left: Left, own: Ints) -> tuple[sp.csr_matrix, Floats, Floats]:
         """Return the rows: assignments, hub count, capacities, links x_ik <= x_kk for what is allowed."""
@@ -150,9 +165,28 @@ class AllocationMaster:
             np.concatenate(index).astype(np.int32),
             np.concatenate(value),
         )
+        first = self._base + len(self._cut_rows) + len(self._cover_rows)
+        self._cut_rows += range(first, first + len(owners))
         self.owners += owners
         self.cuts += cuts
         self._idle += [0] * len(owners)
+
+    def add_covers(self, covers: list[Cover]) -> None:
+        """Add cover rows; the price of breaking the capacity breaks them too."""
+        n, k = self.n, self.k
+        for cover in covers:
+            members = np.flatnonzero(cover.members)
+            index = np.concatenate(
+                (
+                    members * k + cover.hub,
+                    [self.choice.hubs[cover.hub] * k + cover.hub],
+                    [n * k + n + int(np.searchsorted(self.capped, cover.hub))],
+                )
+            )
+            value = np.concatenate((np.ones(len(members)), [-float(cover.most), -float(n)]))
+            self._lp.addRow(-np.inf, 0.0, len(index), index.astype(np.int32), value)
+            self._cover_rows.append(self._base + len(self._cut_rows) + len(self._cover_rows))
+            self.covers.append(cover)
 
     def add(self, cuts: Floats, x: Floats, eta: Floats, tolerance: float) -> int:
         """Add the cuts (n, n, K) that the point violates; return how many."""
@@ -172,16 +206,18 @@ class AllocationMaster:
             lower[self.choice.hubs, np.arange(k)], left.domain.lower
         )
         self._lp.changeColsBounds(n * k, columns, lower.ravel(), left.allowed.ravel().astype(np.float64))
+        self._lp.changeRowBounds(n, float(left.domain.hubs_min), float(left.domain.hubs_max))
         self._lp.run()
         solution = self._lp.getSolution()
         values, duals = np.array(solution.col_value), np.array(solution.row_dual)
         if len(values) != n * k + n + len(self.capped) or not np.isfinite(values).all():
             values = np.zeros(n * k + n + len(self.capped))
             values[: n * k] = (left.allowed / left.allowed.sum(axis=1, keepdims=True)).ravel()
-        if len(duals) != self._base + len(self.owners):
-            duals = np.zeros(self._base + len(self.owners))
+        count = self._base + len(self._cut_rows) + len(self._cover_rows)
+        if len(duals) != count:
+            duals = np.zeros(count)
         self._row_duals = np.where(np.isfinite(duals), duals, 0.0)
-        used = self._row_duals[self._base :] > 0.0
+        used = self._row_duals[self._cut_rows] > 0.0
         self._idle = [0 if now else idle + 1 for now, idle in zip(used, self._idle)]
         x = np.clip(values[: n * k].reshape(n, k), lower, left.allowed)
         return x, values[n * k : n * k + n]
@@ -200,6 +236,10 @@ class AllocationMaster:
         costs = self.choice.own + changed.reshape(n, k) + price * self.choice.load[:, None]
         fixed = self.choice.fixed.copy()
         fixed[self.capped] -= (price * self.choice.capacity)[self.capped] if len(self.capped) else 0.0
+        for cover, row in zip(self.covers, self._cover_rows):
+            weight = max(-float(self._row_duals[row]), 0.0)
+            costs[cover.members, cover.hub] += weight
+            fixed[cover.hub] -= weight * cover.most
         base = float(self.floor[~covered].sum())
         opened = x[self.choice.hubs, np.arange(k)] > 0.5
         best: AllocationBound | None = None
@@ -222,7 +262,7 @@ class AllocationMaster:
 
     def _multipliers(self) -> tuple[Floats, Bools]:
         owner = np.array(self.owners, dtype=np.int64)
-        duals = np.maximum(self._row_duals[self._base :], 0.0)
+        duals = np.maximum(self._row_duals[self._cut_rows], 0.0)
         total = np.bincount(owner, duals, self.n)
         first = np.zeros(len(owner))
         first[np.unique(owner, return_index=True)[1]] = 1.0
@@ -231,7 +271,7 @@ class AllocationMaster:
 
     def purge(self, idle: int, left: Left) -> None:
         """Drop the cuts that carried no multiplier in the last `idle` solves."""
-        if sum(age >= idle for age in self._idle) * 3 > len(self.owners):
+        if sum(age >= idle for age in self._idle) * 3 > len(self.owners) + 3 * self.n:
             keep = [place for place, age in enumerate(self._idle) if age < idle]
             self.owners = [self.owners[place] for place in keep]
             self.cuts = [self.cuts[place] for place in keep]
@@ -242,6 +282,10 @@ class AllocationMaster:
         used = [place for place, age in enumerate(self._idle) if age < 2]
         self.owners = [self.owners[place] for place in used]
         self.cuts = [self.cuts[place].reshape(self.n, self.k)[:, keep].ravel() for place in used]
+        place = {int(old): new for new, old in enumerate(keep)}
+        self.covers = [
+            Cover(place[cover.hub], cover.members, cover.most) for cover in self.covers if cover.hub in place
+        ]
         self.choice, self.k = choice, len(keep)
         self.capped = np.flatnonzero(np.isfinite(choice.capacity))
         self._build(left)

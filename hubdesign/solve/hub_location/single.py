@@ -11,6 +11,7 @@ hold; cuts and bounds as their modules say. A node with everything fixed is pric
 
 from __future__ import annotations
 
+import dataclasses
 import heapq
 
 import numpy as np
@@ -18,6 +19,7 @@ import numpy as np
 from hubdesign.solve.control import Control
 from hubdesign.solve.hub_location.allocation import Choice, allocate, improve_hubs
 from hubdesign.solve.hub_location.choosing import AllocationMaster, Left, settle
+from hubdesign.solve.hub_location.covers import fewest_hubs, find_covers
 from hubdesign.solve.hub_location.evaluate import single_unit_costs, total_cost
 from hubdesign.solve.hub_location.instance import Bools, Floats, HubAnswer, HubInstance, HubStatus, Ints
 from hubdesign.solve.hub_location.master import Domain
@@ -95,7 +97,7 @@ def solve_single(instance: HubInstance, control: Control, allocations: tuple[Int
     allocations
         Hubs of the stations, (n,) each, to start from; those the instance does not allow are passed over.
     """
-    relaxation = build_relaxation(instance, closure=False)
+    relaxation = _with_fewest_hubs(instance, build_relaxation(instance, closure=False))
     if relaxation.hubs_min > relaxation.hubs_max:
         return HubAnswer((), None, np.inf, np.inf, HubStatus.INFEASIBLE)
     relaxation, starts, promise = first_plans(relaxation, control)
@@ -112,6 +114,18 @@ def solve_single(instance: HubInstance, control: Control, allocations: tuple[Int
     if not root.finished and not control.stop_requested():
         bound = AllocationTree(instance, root, incumbent, control, bound).run()
     return _answer(incumbent, relaxation, bound, control)
+
+
+def _with_fewest_hubs(instance: HubInstance, relaxation: Relaxation) -> Relaxation:
+    """Return the relaxation with at least the hubs that the collection capacities need."""
+    needed = fewest_hubs(
+        instance.collection_capacity[relaxation.hubs],
+        relaxation.forced,
+        np.ones(len(relaxation.hubs), dtype=bool),
+        float(instance.volume.sum()),
+    )
+    count = len(relaxation.hubs) + 1 if needed is None else needed
+    return dataclasses.replace(relaxation, hubs_min=max(relaxation.hubs_min, count))
 
 
 class AllocationTree:
@@ -205,14 +219,15 @@ class AllocationTree:
             stalled = stalled + 1 if turn and slow else 0
             if stalled > (2 if at_root else 0) and not whole:
                 break
-            added = 0
+            covers = [] if whole else find_covers(self.choice, x)
+            self.master.add_covers(covers)
+            added = len(covers)
             if not whole and at_root:
                 self.centre = 0.5 * (self.centre + x)
-                added = self._separate(0.5 * (x + self.centre), x, eta)
+                added += self._separate(0.5 * (x + self.centre), x, eta)
             if not added and not self._separate(np.round(x) if whole else x, x, eta):
                 break
-            if at_root:
-                self.master.purge(5, settled)
+            self.master.purge(5 if at_root else 40, self.left)
         return value, settled, x
 
     def _narrow(self, left: Left, if_allocated: Floats, if_closed: Floats, limit: float) -> Left | None:
@@ -294,7 +309,10 @@ def _possible(instance: HubInstance, choice: Choice) -> Bools:
     sends, receives = np.asarray(moved.any(axis=1)), np.asarray(moved.any(axis=0))
     can_send = np.isfinite(instance.collect[:, choice.hubs]) | ~sends[:, None]
     can_receive = np.isfinite(instance.distribute[choice.hubs].T) | ~receives[:, None]
-    fits = choice.load[:, None] <= choice.capacity * (1.0 + 1e-9)
+    # an open hub collects its own volume first
+    beside = choice.load[:, None] + choice.load[choice.hubs]
+    beside[choice.hubs, np.arange(len(choice.hubs))] = choice.load[choice.hubs]
+    fits = beside <= choice.capacity * (1.0 + 1e-9)
     return np.asarray(can_send & can_receive & fits)
 
 

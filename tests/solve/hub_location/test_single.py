@@ -86,7 +86,9 @@ def test_no_bound_or_fixing_cuts_off_an_allocation(capacity: bool) -> None:
         rng = np.random.default_rng(seed)
         domain = Domain(choice.forced.astype(float), np.ones(k), choice.hubs_min, choice.hubs_max)
         left = settle(choice, Left(domain, np.ones((n, k), dtype=bool)))
-        assert left is not None
+        if left is None:
+            assert math.isinf(oracle.best_single(instance))
+            continue
         master = AllocationMaster(choice, np.full(n, -1e4), left)
         pairs = Pairs.of(choice)
         for _ in range(3):
