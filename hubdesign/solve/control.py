@@ -86,6 +86,10 @@ class Control:
         finally:
             self._interrupters.remove(interrupt)
 
+    def end(self) -> None:
+        """Let this step end now; a part ends alone, the solve it belongs to goes on."""
+        self.time_limit_s = 0.0
+
     def part(
         self,
         time_limit_s: float,
