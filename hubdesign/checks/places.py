@@ -34,6 +34,8 @@ class Places:
         Tables that could not be read (whole): references into them are not judged.
     given
         Names of settings that were written rather than left to their default.
+    setting_lines
+        Setting -> ``line 5,`` of the file or ``row 5,`` of the sheet.
     """
 
     labels: Mapping[str, str] = field(default_factory=dict)
@@ -42,6 +44,7 @@ class Places:
     stray: Mapping[str, frozenset[str]] = field(default_factory=dict)
     unread: frozenset[str] = frozenset()
     given: frozenset[str] = frozenset()
+    setting_lines: Mapping[str, str] = field(default_factory=dict)
 
     def label(self, table: str) -> str:
         """Return how people find a table."""
@@ -60,8 +63,9 @@ class Places:
         return f"{text} ({who})" if who else text
 
     def setting(self, name: str) -> str:
-        """Return ``settings.toml [network] hubs``."""
-        return f"{self.label('settings')} [{_SECTION[name]}] {name}"
+        """Return ``settings.toml line 5, [network] hubs``; without the line where it has its default."""
+        start = f"{self.label('settings')} {self.setting_lines.get(name, '')}".rstrip()
+        return f"{start} [{_SECTION[name]}] {name}"
 
 
 def who_is(record: Station | Demand | Vehicle | ListedLink | CurrentLink) -> str:
@@ -124,6 +128,11 @@ class Case:
     def vehicle_codes(self) -> frozenset[str]:
         """The codes of the fleet table."""
         return frozenset(row.vehicle for row in self.problem.vehicles)
+
+    @cached_property
+    def suggestions(self) -> dict[tuple[str, str], str]:
+        """Cures already looked up, (table, code) -> words: likeness is slow to measure."""
+        return {}
 
     @property
     def no_fleet(self) -> bool:

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import dataclasses
+import unicodedata
 from collections.abc import Callable, Iterator
 
 import numpy as np
 
-from hubdesign.checks import unbound, unused
+from hubdesign.checks import doubtful, unbound, unused
 from hubdesign.checks.findings import some
 from hubdesign.checks.places import Case, who_is
 from hubdesign.checks.reach import demands_without_itinerary
@@ -94,15 +95,20 @@ def suspect_near_stations(case: Case) -> Iterator[Fault]:
 
 
 def suspect_alike_codes(case: Case) -> Iterator[Fault]:
-    """Codes that differ in case only are easily mixed up."""
-    first: dict[str, int] = {}
-    for i, row in enumerate(case.problem.stations):
-        j = first.setdefault(row.station.casefold(), i)
-        if case.problem.stations[j].station != row.station:
-            what = (
-                f"differs from {case.problem.stations[j].station} ({case.where('stations', j)}) in case only"
-            )
-            yield from case.row("stations", i, "station", what, "are they one station?")
+    """Codes that differ in case, or in how a letter is coded, are easily mixed up."""
+    for table, column in (
+        ("stations", "station"),
+        ("fleet", "vehicle"),
+        ("fleet", "mode"),
+        ("links", "mode"),
+    ):
+        first: dict[str, tuple[str, int]] = {}
+        for i, row in enumerate(case.records(table)):
+            code: str = getattr(row, column)
+            other, j = first.setdefault(unicodedata.normalize("NFKC", code).casefold(), (code, i))
+            if other != code:
+                what = f"{code} differs from {other} ({case.where(table, j)}) in case or coding only"
+                yield from case.row(table, i, column, what, "are they one?")
 
 
 def suspect_blank_coordinates(case: Case) -> Iterator[Fault]:
@@ -228,6 +234,7 @@ WITH_NETWORK: tuple[Callable[[Case, Network], Iterator[Fault]], ...] = (
     suspect_unreached_stations,
     suspect_no_itinerary,
     suspect_beyond_capacity,
+    *doubtful.SUSPICIONS,
     *unused.SUSPICIONS,
     *unbound.SUSPICIONS,
 )

@@ -24,6 +24,7 @@ _WORDS_FOR_NO_NUMBER = ("nan", "inf", "infinity", "none", "null", "n/a", "na", "
 LARGEST = 1e15
 _LONGEST_CODE = 32
 _LONGEST_TEXT = 1000
+_LONGEST_NUMBER = 400
 _QUOTES = "\"'`\u2018\u2019\u201a\u201c\u201d\u201e\u00ab\u00bb\u2039\u203a"
 _NOT_IN_CODES = "/\\,;|" + _QUOTES
 _CHARACTER_NAMES = {" ": "a blank", "\u00a0": "a no-break blank", "/": "a slash", "\\": "a backslash"}
@@ -101,6 +102,8 @@ def _number(cell: Cell, spec: Column | Setting, decimals: Decimals) -> float:
 
 
 def _number_of_text(text: str, spec: Column | Setting, decimals: Decimals) -> float:
+    if len(text) > _LONGEST_NUMBER:
+        raise BadCell(f"{shown(text)} is too long for a number", "check the cell")
     if _POINT.fullmatch(text):
         if "." in text and decimals.comma_allowed:
             decimals.saw(text, comma=False)
@@ -129,6 +132,8 @@ def _no_number(text: str, spec: Column | Setting, decimals: Decimals) -> tuple[s
         )
     if re.fullmatch(r"[+-]?[0-9]{1,3}(?:[ _.,'\u00a0\u202f\u2019][0-9]{3})+(?:[.,][0-9]+)?", text):
         return f"{given} is not a number: thousands separators are not read", "leave them out"
+    if spec.name in ("lat", "lon") and any(char.isdigit() for char in text):
+        return f"{given} is not a number", "write decimal degrees, south and west with a minus sign"
     if text.endswith("%"):
         return f"{given} is not a number", "write a share such as 0.8, or the bare figure where the unit is %"
     if re.fullmatch(r"[+-]?[0-9.,]+ ?[^\d\s]+(?:/[^\d\s]+)?", text) and text.isascii():

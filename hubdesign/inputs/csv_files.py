@@ -8,7 +8,9 @@ from __future__ import annotations
 
 import csv
 import io
+import re
 import stat
+from collections import Counter
 from collections.abc import Collection
 from pathlib import Path
 
@@ -16,6 +18,7 @@ from hubdesign.checks.findings import Findings
 from hubdesign.inputs.raw import Cell, RawTable, Row, is_blank, is_note, shown
 
 _SEPARATOR_NAMES = {",": "commas", ";": "semicolons", "\t": "tabs"}
+_DIRECTIVE = re.compile(r"sep=([,;\t])\r?\n", re.IGNORECASE)
 _MOST_BYTES = 512 * 1024 * 1024
 
 
@@ -89,6 +92,8 @@ def read_table(
     if text is None:
         return None
     separator = _separator(text, known)
+    if match := _DIRECTIVE.match(text):  # a spreadsheet's own "sep=;" line, which it does not count
+        separator, text = match.group(1), text[match.end() :]
     records, whole = _records(text, separator, label, findings)
     if not records:
         if whole:
@@ -159,14 +164,10 @@ def fit_to_header(
         header.pop()
     table.header = header
     where = f"{table.label} row {header_number}"
-    for column in dict.fromkeys(column for column in header if column):
-        if header.count(column) > 1:
-            findings.fault(
-                where,
-                f"the column {shown(column)} stands {header.count(column)} times",
-                "keep one",
-                "doubled column",
-            )
+    for column, times in Counter(column for column in header if column).items():
+        if times > 1:
+            what = f"the column {shown(column)} stands {times} times"
+            findings.fault(where, what, "keep one", "doubled column")
     for number, cells in records[1:]:
         if check_count and len(cells) != width:
             _count_fault(table, number, len(cells), width, findings)
@@ -204,8 +205,9 @@ def _unnamed_columns(table: RawTable, where: str, findings: Findings) -> None:
 
 def named_columns(table: RawTable) -> dict[str, int]:
     """Return column -> position; the planner's own, unnamed and doubled ones are left out."""
+    times = Counter(table.header)
     return {
         column: place
         for place, column in enumerate(table.header)
-        if column and not is_note(column) and table.header.count(column) == 1
+        if column and not is_note(column) and times[column] == 1
     }

@@ -55,6 +55,7 @@ def read_matrix(raw: RawTable, findings: Findings) -> ReadTable:
 
 def _destinations(raw: RawTable, findings: Findings) -> dict[int, str]:
     result: dict[int, str] = {}
+    seen: set[str] = set()
     for place, name in enumerate(raw.header[1:], 1):
         if not name:
             if any(not is_blank(row.cells[place]) for row in raw.rows):
@@ -62,8 +63,9 @@ def _destinations(raw: RawTable, findings: Findings) -> dict[int, str]:
                 findings.fault(f"{raw.label} header", what, "write the station's code above it", "no header")
         elif not is_note(name):
             code = _code(name, f"{raw.label} header, column {place + 1}", findings)
-            if code is not None and code not in result.values():  # doubled ones are a fault already
+            if code is not None and code not in seen:  # doubled ones are a fault already
                 result[place] = code
+                seen.add(code)
     return result
 
 

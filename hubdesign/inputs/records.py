@@ -51,6 +51,7 @@ def _places(tables: Mapping[str, ReadTable], settings: ReadSettings) -> Places:
         unread=frozenset(name for name, table in tables.items() if not table.whole)
         | ({"stations", "demand"} - set(tables)),
         given=frozenset(settings.values),
+        setting_lines=dict(settings.lines),
     )
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime
+import re
 import tomllib
 from dataclasses import dataclass, field
 from typing import Any
@@ -21,12 +22,16 @@ _MODE_NAMES = {setting.name: setting for setting in MODE_SETTINGS}
 
 @dataclass
 class ReadSettings:
-    """Values by setting name; `bad` are names at fault, `modes` the [mode.NAME] factors."""
+    """Values by setting name.
+
+    `modes` are the [mode.NAME] factors, `bad` the names at fault, `lines` where each stands (``line 5``).
+    """
 
     label: str
     values: dict[str, Any] = field(default_factory=dict)
     modes: dict[str, float] = field(default_factory=dict)
     bad: set[str] = field(default_factory=set)
+    lines: dict[str, str] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,6 +43,7 @@ class _Entry:
     name: str
     value: Any
     typed: bool
+    line: str
 
 
 def read_toml(label: str, data: bytes, findings: Findings) -> ReadSettings:
@@ -52,31 +58,65 @@ def read_toml(label: str, data: bytes, findings: Findings) -> ReadSettings:
         words = str(error) if isinstance(error, tomllib.TOMLDecodeError) else "too deep or too long a value"
         findings.fault(label, f"is not TOML: {words}", 'write name = value, texts in "quotes"', "toml syntax")
         return result
+    lines = _find_lines(text)
     for section, content in tree.items():
         if section == "mode" and isinstance(content, dict):
             for mode, entries in content.items():
-                _toml_section(result, f"mode.{mode}", entries, findings)
+                _toml_section(result, f"mode.{mode}", entries, lines, findings)
         else:
-            _toml_section(result, section, content, findings)
+            _toml_section(result, section, content, lines, findings)
     return result
 
 
-def _toml_section(result: ReadSettings, section: str, content: Any, findings: Findings) -> None:
+_HEADING = re.compile(r"\s*\[\s*([A-Za-z0-9_.\s\"'-]+?)\s*\]\s*(?:#.*)?")
+_KEY = re.compile(r"""\s*["']?([A-Za-z0-9_-]+)["']?\s*=""")
+
+
+def _find_lines(text: str) -> dict[tuple[str, str], int]:
+    """Return (section, name) -> line; the parser does not say, and a miss only leaves the line out."""
+    found: dict[tuple[str, str], int] = {}
+    section = ""
+    for number, line in enumerate(text.split("\n"), 1):
+        heading = _HEADING.fullmatch(line.rstrip("\r"))
+        if heading:
+            section = heading.group(1)
+        elif key := _KEY.match(line):
+            found.setdefault((section, key.group(1)), number)
+    return found
+
+
+def _place(label: str, line: int | None, section: str, name: str) -> str:
+    """Return ``settings.toml line 5, [network] hubs``, without the line where it is not known."""
+    start = f"{label} line {line}," if line else label
+    return f"{start} [{_name(section)}] {_name(name)}"
+
+
+def _toml_section(
+    result: ReadSettings, section: str, content: Any, lines: dict[tuple[str, str], int], findings: Findings
+) -> None:
+    if isinstance(content, list) and _known_section(section):
+        what = "is a list of sections"
+        findings.fault(f"{result.label} {section}", what, f"write [{section}], once", "unknown setting")
+        return
     if not isinstance(content, dict):
         setting = _BY_NAME.get(section)
         cure = f"put it under [{setting.section}]" if setting else nearest(section, _BY_NAME)
-        what = "stands outside any section" if section != "mode" else "is not a section: write [mode.NAME]"
+        what = "stands outside any section"
+        if section.split(".")[0] == "mode":
+            what, cure = "needs the name of a mode", "write it under [mode.NAME], such as [mode.road]"
         findings.fault(f"{result.label} {_name(section)}", what, cure, "unknown setting")
         return
     if not _known_section(section):
         cure = nearest(section, _SECTIONS) or f"sections are {', '.join(_SECTIONS)} and mode.NAME"
         findings.fault(
-            f"{result.label} [{section[:40]}]", "this section is not known", cure, "unknown setting"
+            f"{result.label} [{_name(section)}]", "this section is not known", cure, "unknown setting"
         )
         return
     for name, value in content.items():
-        where = f"{result.label} [{section}] {name}"
-        _take(result, _Entry(where, section, name, value, True), findings)
+        line = lines.get((section, name))
+        where = _place(result.label, line, section, name)
+        entry = _Entry(where, section, name, value, True, f"line {line}," if line else "")
+        _take(result, entry, findings)
 
 
 def read_sheet(raw: RawTable, findings: Findings) -> ReadSettings:
@@ -98,7 +138,7 @@ def read_sheet(raw: RawTable, findings: Findings) -> ReadSettings:
     for row in raw.rows:
         section, name = (_word(row.cells[places[column]]) for column in ("section", "setting"))
         value = row.cells[places["value"]]
-        where = f"{raw.label} row {row.number}, [{section[:40]}] {name[:40]}"
+        where = f"{raw.label} row {row.number}, [{_name(section)}] {_name(name)}"
         if is_blank(value):
             continue
         if (section, name) in seen:
@@ -107,7 +147,7 @@ def read_sheet(raw: RawTable, findings: Findings) -> ReadSettings:
             cure = nearest(section, _SECTIONS) or f"sections are {', '.join(_SECTIONS)} and mode.NAME"
             findings.fault(where, f"the section {shown(section)} is not known", cure, "unknown setting")
         else:
-            _take(result, _Entry(where, section, name, value, False), findings)
+            _take(result, _Entry(where, section, name, value, False, f"row {row.number},"), findings)
         seen[section, name] = row.number
     return result
 
@@ -139,6 +179,8 @@ def _take(result: ReadSettings, entry: _Entry, findings: Findings) -> None:
                 cure = cure if section == entry.section else f"{cure.rstrip('?')} in [{section}]?"
         findings.fault(entry.where, what, cure, "unknown setting")
         return
+    if not mode:
+        result.lines[setting.name] = entry.line
     try:
         value = _typed(entry.value, setting) if entry.typed else _of_cell(entry.value, setting)
         if mode:

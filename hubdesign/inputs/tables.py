@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 from typing import Any
 
-from hubdesign.checks.findings import Findings, nearest, some
+from hubdesign.checks.findings import LISTED_PER_RULE, Findings, nearest, some
 from hubdesign.checks.places import Place
 from hubdesign.inputs.convert import BadCell, Decimals, convert, is_numeric_code
 from hubdesign.inputs.csv_files import named_columns
@@ -97,8 +97,9 @@ def _check_header(raw: RawTable, table: Table, places: dict[str, int], findings:
     known = {column.name for column in table.columns}
     unknown = [name for name in places if name not in known]
     absent = [column.name for column in table.columns if column.required and column.name not in raw.header]
-    for name in unknown:
-        cure = nearest(name, known - set(places)) or "a column whose name begins with note is your own"
+    for count, name in enumerate(unknown):
+        likely = nearest(name, known - set(places)) if count < LISTED_PER_RULE else ""
+        cure = likely or "a column whose name begins with note is your own"
         findings.fault(where, f"the column {shown(name)} is not known", cure, "unknown column")
     for name in absent:
         cure = f"add it ({table.column(name).meaning})"

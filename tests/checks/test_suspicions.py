@@ -69,8 +69,8 @@ def test_two_stations_within_a_kilometre(tmp_path: Path) -> None:
 def test_codes_that_differ_in_case_only(tmp_path: Path) -> None:
     lines = _warned(tmp_path, stations_csv=STATIONS + "aal,53,13,no\n", demand_csv=DEMAND + "aal,BRO,5,80\n")
     assert lines == [
-        "stations.csv row 6, station (station aal): differs from AAL (row 2) in case only;"
-        " are they one station?"
+        "stations.csv row 6, station (station aal): aal differs from AAL (row 2) in case or"
+        " coding only; are they one?"
     ]
 
 
@@ -245,3 +245,52 @@ def test_twenty_warnings_of_a_rule_are_listed_and_the_rest_counted(tmp_path: Pat
         line.startswith("... and ") and line.endswith("more like these (near stations)")
         for line in listed_warnings(report.warnings)
     )
+
+
+def test_modes_that_differ_in_case_only(tmp_path: Path) -> None:
+    fleet = "vehicle,mode,capacity,speed_kmh,cost_per_hour\ngull-50,air,50,500,1500\ntern-9,Air,9,300,500\n"
+    lines = _warned(tmp_path, fleet_csv=fleet)
+    assert any("row 3, mode (vehicle tern-9): Air differs from air (row 2) in case" in x for x in lines)
+
+
+@pytest.mark.parametrize("speed", ["28", "1300"])
+def test_a_speed_that_is_rare_for_its_mode(speed: str, tmp_path: Path) -> None:
+    (line,) = _warned(tmp_path, fleet_csv=FLEET.replace(",500,", f",{speed},"))
+    assert line.startswith(f"fleet.csv row 2, speed_kmh (vehicle gull-50): {speed} km/h is rare for air")
+
+
+def test_more_vehicle_hours_than_the_period_has(tmp_path: Path) -> None:
+    fleet = FLEET.replace("\n", ",hours_per_vehicle\n", 1).replace("1500\n", "1500,200\n")
+    (line,) = _warned(tmp_path, fleet_csv=fleet, settings_toml="[case]\nperiod = 'Week'\n" + SETTINGS)
+    assert "200 hours are more than a week has (168)" in line
+
+
+def test_fewer_vehicle_hours_than_a_departure_takes(tmp_path: Path) -> None:
+    # The shortest pair, BRO-DOR, is 181.4 km long: 0.363 h at 500 km/h.
+    fleet = FLEET.replace("\n", ",hours_per_vehicle\n", 1).replace("1500\n", "1500,0.3\n")
+    (line,) = _warned(tmp_path, fleet_csv=fleet)
+    assert "0.3 hours are less than its shortest departure takes (0.363 h)" in line
+
+
+def test_demand_in_one_direction_only(tmp_path: Path) -> None:
+    stations = "station,lat,lon,may_be_hub\n" + "".join(f"S{i},{45 + i},{5 + i},yes\n" for i in range(5))
+    rows = "".join(f"S{a},S{b},5,90\n" for a in range(5) for b in range(a))
+    demand = "origin,destination,volume,revenue\n" + rows
+    (line,) = _warned(tmp_path, stations_csv=stations, demand_csv=demand)
+    assert line.startswith("demand.csv: none of 10 O-D pairs has its way back")
+
+
+def test_mixed_without_a_candidate_is_said_to_be_point_to_point(tmp_path: Path) -> None:
+    stations = STATIONS.replace("may_be_hub", "hub_fixed_cost").replace("yes", "900").replace("no", "")
+    (line,) = _warned(tmp_path, stations_csv=stations)
+    assert "mixed is point-to-point then; yet hub columns are filled (AAL, CEL)" in line
+
+
+def test_a_one_way_link_without_a_way_back(tmp_path: Path) -> None:
+    links = "from,to,direction\nAAL,BRO,one-way\nBRO,CEL,one-way\nCEL,AAL,one-way\nCEL,DOR,one-way\n"
+    settings = SETTINGS + "[network]\nlinks = 'listed'\nmax_transfers = 2\n"
+    lines = _warned(tmp_path, links_csv=links, settings_toml=settings)
+    assert [line for line in lines if "way back" in line] == [
+        "links.csv row 5, direction (CEL-DOR air): one-way, and no vehicle type that serves it has a way"
+        " back: it cannot be operated; list its way back, or remove it"
+    ]

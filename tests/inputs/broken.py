@@ -21,7 +21,7 @@ FOLDER = Path(__file__).parents[1] / "broken_cases"
 SOUND = {
     "stations.csv": "station,name,lat,lon\nAAL,Aalbek,50.1,8.2\nBRO,Brodorf,51.4,9.9\n",
     "demand.csv": "origin,destination,volume\nAAL,BRO,120\n",
-    "settings.toml": "[cost]\nunit_cost_per_km = 0.1\n",
+    "settings.toml": '[network]\nstructure = "point-to-point"\n[cost]\nunit_cost_per_km = 0.1\n',
 }
 
 

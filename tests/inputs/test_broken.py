@@ -102,7 +102,7 @@ def test_a_fault_in_a_cell_is_not_followed_by_faults_of_its_stand_in(tmp_path: P
         "demand.csv row 2, volume (BRO-CEL)",
         "fleet.csv row 2, capacity (vehicle gull)",
         "fleet.csv row 2, hours_per_vehicle (vehicle gull)",
-        "settings.toml [network] hubs",
+        "settings.toml line 3, [network] hubs",
         "stations.csv row 2, station",
         "stations.csv row 3, lon (station BRO)",
         "stations.csv row 3, may_be_hub (station BRO)",

@@ -9,7 +9,7 @@ import pytest
 from hubdesign.inputs import check, input_files, read_case
 from hubdesign.inputs.convert import BadCell, Decimals, convert
 from hubdesign.schema import STATIONS, Column
-from tests.inputs.broken import write_folder
+from tests.inputs.broken import SOUND, write_folder
 
 NUMBER = Column("x", "number", "a number")
 SEMICOLONS = "station;lat;lon;hub_fixed_cost\nAAL;50,1;8,2;1000\nBRO;51,45;9;\n"
@@ -40,7 +40,7 @@ def test_a_byte_order_mark_is_skipped_and_said(tmp_path: Path) -> None:
     folder = write_folder(
         tmp_path,
         stations_csv=b"\xef\xbb\xbfstation,lat,lon\nAAL,50,8\nBRO,51,9\n",
-        settings_toml=b"\xef\xbb\xbf[cost]\nlink_fixed_cost = 5\n",
+        settings_toml=b"\xef\xbb\xbf" + SOUND["settings.toml"].encode(),
     )
     assert read_case(folder).stations[0].station == "AAL"
     assert _warned(folder) == ["stations.csv, settings.toml: a byte-order mark was skipped"]
@@ -216,3 +216,33 @@ def test_a_fifo_in_place_of_a_table_does_not_hang(tmp_path: Path) -> None:
     os.mkfifo(folder / "fleet.csv")
     (fault,) = check(folder).faults
     assert str(fault) == "fleet.csv: is not a regular file; put a plain file there"
+
+
+def test_the_separator_line_of_a_spreadsheet_is_obeyed_and_not_counted(tmp_path: Path) -> None:
+    folder = write_folder(tmp_path, stations_csv="sep=;\r\nstation;lat;lon\r\nAAL;50,1;8\r\nBRO;91;9\r\n")
+    (fault,) = check(folder).faults
+    assert fault.where == "stations.csv row 3, lat (station BRO)"
+
+
+@pytest.mark.parametrize("text", ["48°12'", "48.2N", "N48.2", "48:12:30"])
+def test_degrees_and_minutes_are_asked_for_as_decimals(text: str, tmp_path: Path) -> None:
+    (fault,) = check(write_folder(tmp_path, stations_csv=f"station,lat,lon\nAAL,{text},8\nBRO,51,9\n")).faults
+    assert fault.cure == "write decimal degrees, south and west with a minus sign"
+
+
+def test_a_name_in_place_of_a_code_is_told_its_code(tmp_path: Path) -> None:
+    (fault,) = check(write_folder(tmp_path, demand_csv="origin,destination,volume\nAAL,Brodorf,5\n")).faults
+    assert str(fault).endswith("Brodorf is not in stations.csv; write its code BRO")
+
+
+def test_hostile_sizes_are_refused_quickly(tmp_path: Path) -> None:
+    import time
+
+    header = "station,lat,lon," + ",".join(f"x{i}" for i in range(20_000))
+    rows = "".join(f"{code},50,8{',' * 20_000}\n" for code in ("AAL", "BRO"))
+    demand = "origin,destination,volume\n" + "".join(f"Q{i},R{i},{',' * 100}\n" for i in range(200))
+    demand += "".join(f"Q{i},R{i},5\n" for i in range(20_000)) + "AAL,BRO," + '"' + "," * 100_000 + '"\n'
+    folder = write_folder(tmp_path, stations_csv=header + "\n" + rows, demand_csv=demand)
+    start = time.process_time()
+    assert len(check(folder).faults) > 40_000
+    assert time.process_time() - start < 30  # a hang, not a benchmark: it takes about 1 s

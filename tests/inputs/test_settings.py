@@ -46,7 +46,7 @@ def test_every_figure_keeps_its_range(setting: object, tmp_path: Path) -> None:
     under = int(setting.low) if setting.low_open else int(setting.low) - 1
     folder = write_folder(tmp_path, settings_toml=f"[{setting.section}]\n{setting.name} = {under}\n")
     told = [fault.where for fault in check(folder).faults]
-    assert f"settings.toml [{setting.section}] {setting.name}" in told
+    assert f"settings.toml line 2, [{setting.section}] {setting.name}" in told
 
 
 @pytest.mark.parametrize(
@@ -59,3 +59,31 @@ def test_hostile_toml_is_refused_in_words(text: str, tmp_path: Path) -> None:
 def test_a_toml_fault_is_said_by_line(tmp_path: Path) -> None:
     (fault,) = check(write_folder(tmp_path, settings_toml="[goal]\ngoal = least-cost\n")).faults
     assert "line 2" in fault.what
+
+
+def test_faults_name_the_line_of_their_setting(tmp_path: Path) -> None:
+    text = "# a remark\n\n[network]  # another\nhubs = 2\r\n'hubs_max' = 1\n"
+    text += "\n[ mode.road ]\nfactor = 2\n[solve]\nhubs = 5\n"
+    told = [fault.where for fault in check(write_folder(tmp_path, settings_toml=text)).faults]
+    assert "settings.toml line 4, [network] hubs" in told
+    assert "settings.toml line 8, [mode.road] factor" in told
+    assert "settings.toml line 10, [solve] hubs" in told
+
+
+@pytest.mark.parametrize(
+    ("text", "words"),
+    [
+        ("[[network]]\nhubs = 1\n", "settings.toml network: is a list of sections; write [network], once"),
+        ("[mode]\ndistance_factor = 1.2\n", "needs the name of a mode; write it under [mode.NAME]"),
+        ("mode = 'road'\n", "needs the name of a mode; write it under [mode.NAME]"),
+        (
+            "[network.hubs]\ncount = 1\n",
+            "settings.toml [network] hubs: {...} is a section; write a whole number",
+        ),
+        ("['a\u200bb']\nx = 1\n", "this section is not known"),
+    ],
+)
+def test_sections_in_a_wrong_shape_are_explained(text: str, words: str, tmp_path: Path) -> None:
+    (fault,) = check(write_folder(tmp_path, settings_toml=text)).faults
+    assert words in str(fault)
+    assert str(fault).isprintable()
