@@ -25,6 +25,7 @@ EXAMPLE_SETTINGS: dict[str, Value] = {
     "hubs_max": 2,
     "max_transfers": 2,
     "max_circuity": 1.8,
+    "min_frequency": 3.0,
     "max_load_factor": 0.85,
     "link_fixed_cost": 900.0,
     "revenue_kept_per_transfer": 0.93,
