@@ -135,13 +135,24 @@ def _verify_design(folder: Path) -> FolderReport:
 
 
 def with_settings_of(problem: Problem, written: dict[str, dict[str, Any]]) -> Problem:
-    """Return `problem` under the settings in force that a summary tells (a comparison changes some)."""
-    names = ("structure", "goal", "unserved", "max_transfers", "threads")
-    flat = {name: value for section in written.values() for name, value in section.items()}
-    changes = {name: flat[name] for name in names if name in flat}
+    """Return `problem` under the settings in force that a summary tells.
+
+    They may differ from the inputs' copy: a comparison changes the structure, a library call any of them.
+    """
+    changes = {
+        name: value
+        for section, values in written.items()
+        if not section.startswith("mode.")
+        for name, value in values.items()
+    }
     if changes.get("max_transfers") == "unlimited":
         changes["max_transfers"] = UNLIMITED
-    return problem.with_settings(**changes)
+    factors = [
+        (section.removeprefix("mode."), values["distance_factor"])
+        for section, values in written.items()
+        if section.startswith("mode.")
+    ]
+    return problem.with_settings(**changes, mode_distance_factor=tuple(factors))
 
 
 def read_design(folder: Path, network: Network, summary: dict[str, Any]) -> Design:

@@ -31,6 +31,7 @@ __all__ = [
     "claim_target",
     "input_copy",
     "read_inputs",
+    "write",
     "write_comparison",
     "write_design",
 ]
@@ -108,6 +109,28 @@ def write_design(
         tables = build_results(result.network, result.design, result.bill)
         _fill_design(folder, result, tables, copied, start, read_s)
     return tuple(read_manifest(held.target).files)
+
+
+def write(
+    outcome: Result | Comparison, target: str | Path, inputs: str | Path | InputFiles
+) -> tuple[str, ...]:
+    """Write a design or a comparison into the folder `target`, whole or not at all.
+
+    Parameters
+    ----------
+    outcome
+        What :func:`hubdesign.design` or :func:`hubdesign.compare` returned.
+    target, inputs
+        As for :func:`write_design`; settings changed since reading stand in summary.json.
+
+    Raises
+    ------
+    OutputError
+        Where the target cannot or must not be written; the old result is kept.
+    """
+    if isinstance(outcome, Comparison):
+        return write_comparison(outcome, target, inputs)
+    return write_design(outcome, target, inputs)
 
 
 def write_comparison(
