@@ -167,7 +167,7 @@ def _in_range(value: float, cell: Cell, spec: Column | Setting) -> float:
 def _range_cure(value: float, spec: Column | Setting) -> str:
     if spec.name == "lat" and abs(value) <= 180:
         return "are lat and lon swapped?"
-    if spec.unit == "share" and 1 < value <= 100:
+    if spec.unit == "share" and 2 <= value <= 100:
         return f"as a share it is {value / 100:g}"
     if spec.low == 0 and value < 0:
         return "check the sign"

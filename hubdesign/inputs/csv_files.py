@@ -19,6 +19,7 @@ from hubdesign.inputs.raw import Cell, RawTable, Row, is_blank, is_note, shown
 
 _SEPARATOR_NAMES = {",": "commas", ";": "semicolons", "\t": "tabs"}
 _DIRECTIVE = re.compile(r"sep=([,;\t])\r?\n", re.IGNORECASE)
+_ARCHIVES = (b"PK\x03\x04", b"\x1f\x8b", bytes.fromhex("D0CF11E0A1B11AE1"))
 _MOST_BYTES = 512 * 1024 * 1024
 
 
@@ -45,6 +46,10 @@ def read_bytes(path: Path, label: str, findings: Findings) -> bytes | None:
 
 def decode(data: bytes, label: str, findings: Findings) -> str | None:
     """Return the text of UTF-8 (with or without a byte-order mark) or, with a warning, cp1252."""
+    if data.startswith(_ARCHIVES):
+        what = "is not text but a workbook or an archive"
+        findings.fault(label, what, "save the table as CSV text", "encoding")
+        return None
     if data[:2] in (b"\xff\xfe", b"\xfe\xff"):
         findings.fault(label, "is UTF-16 text", 'save it as "CSV UTF-8"', "encoding")
         return None
@@ -170,8 +175,8 @@ def fit_to_header(
             findings.fault(where, what, "keep one", "doubled column")
     for number, cells in records[1:]:
         if check_count and len(cells) != width:
-            _count_fault(table, number, len(cells), width, findings)
-            table.stray.update(str(cell).strip(" ") for cell in cells)
+            _count_fault(table, number, cells, width, findings)
+            table.stray.update(str(cell).strip() for cell in cells)
             continue
         beyond = [cell for cell in cells[len(header) :] if not is_blank(cell)]
         if beyond:
@@ -185,13 +190,17 @@ def fit_to_header(
     _unnamed_columns(table, where, findings)
 
 
-def _count_fault(table: RawTable, number: int, count: int, width: int, findings: Findings) -> None:
-    cure = "fill up the row"
+def _count_fault(table: RawTable, number: int, cells: list[Cell], width: int, findings: Findings) -> None:
+    count, cure = len(cells), "fill up the row"
+    others = [mark for mark in _SEPARATOR_NAMES if mark != table.separator and mark in str(cells[0])]
+    if count == 1 and others:
+        separated = _SEPARATOR_NAMES[table.separator]
+        cure = f"separate it by {separated} like the header, not by {_SEPARATOR_NAMES[others[0]]}"
     if count > width:
         cure = "put a text or number that holds a separator in quotes, without thousands separators"
     fields = "field" if count == 1 else "fields"
     what = f"has {count} {fields} where the header has {width}"
-    findings.fault(f"{table.label} row {number}", what, cure, "field count")
+    findings.fault(f"{table.label} row {number}", what, cure, f"{table.name} field count")
 
 
 def _unnamed_columns(table: RawTable, where: str, findings: Findings) -> None:

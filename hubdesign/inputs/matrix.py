@@ -76,7 +76,7 @@ def _code(cell: Cell, where: str, findings: Findings) -> str | None:
             raise BadCell("is blank", "write the station's code")
         return check_code(text)
     except BadCell as bad:
-        findings.fault(where, bad.what, bad.cure, "cell value")
+        findings.fault(where, bad.what, bad.cure, "demand_matrix codes")
         return None
 
 
@@ -86,6 +86,6 @@ def _volume(cell: Cell, where: str, decimals: Decimals, findings: Findings) -> f
     try:
         value = convert(cell, DEMAND.column("volume"), decimals)
     except BadCell as bad:
-        findings.fault(where, bad.what, bad.cure, "cell value")
+        findings.fault(where, bad.what, bad.cure, "demand_matrix volumes")
         return 0.0
     return value if isinstance(value, float) else 0.0

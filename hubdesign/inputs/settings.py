@@ -171,9 +171,11 @@ def _take(result: ReadSettings, entry: _Entry, findings: Findings) -> None:
     if setting is None or (not mode and setting.section != entry.section):
         if setting is not None:
             what, cure = "stands in the wrong section", f"put it under [{setting.section}]"
+            result.bad.add(setting.name)
         else:
             known = _MODE_NAMES if mode else _BY_NAME
             what, cure = "this setting is not known", nearest(entry.name, known)
+            result.bad |= {name for name in known if cure == f"did you mean {name}?"}
             if cure and not mode:
                 section = _BY_NAME[cure.removeprefix("did you mean ").rstrip("?")].section
                 cure = cure if section == entry.section else f"{cure.rstrip('?')} in [{section}]?"

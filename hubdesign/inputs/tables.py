@@ -55,13 +55,19 @@ def read_columns(raw: RawTable, table: Table, findings: Findings) -> ReadTable:
     """Return the values of `raw`; faults and warnings go to `findings`."""
     result = ReadTable(raw.name, raw.label, stray=set(raw.stray), whole=raw.whole, separator=raw.separator)
     places = named_columns(raw)
-    _check_header(raw, table, places, findings)
+    if not any(column.name in raw.header for column in table.columns):
+        _say_no_header(raw, table, findings)
+        result.whole = False
+        return result
+    misspelt = _check_header(raw, table, places, findings)
     if not raw.rows and not raw.stray and raw.whole:
         _say_empty(raw, table, findings)
     columns = [(column, places[column.name]) for column in table.columns if column.name in places]
     absent = [column for column in table.columns if column.name not in places]
     missing = {column.name: _STAND_IN if column.required else column.default for column in absent}
-    missing_bad = {column.name for column in absent if column.required or column.name in raw.header}
+    missing_bad = {
+        column.name for column in absent if column.required or column.name in raw.header
+    } | misspelt
     _, keys = _KEYS[table.name]
     present_keys = [key for key in keys if key in places]
     decimals = Decimals(raw.comma_allowed)
@@ -70,7 +76,7 @@ def read_columns(raw: RawTable, table: Table, findings: Findings) -> ReadTable:
         record = dict(missing)
         faulty = _read_row(raw, row, columns, record, decimals, numeric_codes, findings)
         if len(present_keys) < len(keys) or any(key in faulty for key in keys):
-            result.stray.update(str(row.cells[places[key]]).strip(" ") for key in present_keys)
+            result.stray.update(str(row.cells[places[key]]).strip() for key in present_keys)
             continue
         result.bad.update((len(result.records), column) for column in faulty | missing_bad)
         result.records.append(record)
@@ -80,6 +86,16 @@ def read_columns(raw: RawTable, table: Table, findings: Findings) -> ReadTable:
     say_numeric_codes(numeric_codes, raw.label, findings)
     check_decimals(decimals, raw.label, findings)
     return result
+
+
+def _say_no_header(raw: RawTable, table: Table, findings: Findings) -> None:
+    """The first row names no column at all: one fault instead of one for each."""
+    what = f"no column of {table.name} stands in the first row ({some(map(shown, raw.header), 3)})"
+    names = [column.name for column in table.columns]
+    cure = f"the first row names the columns: {', '.join(names[:4])}, ..."
+    if any(name.lower() in names for name in raw.header):
+        cure = "write the names of columns in small letters"
+    findings.fault(f"{raw.label} header", what, cure, "no header")
 
 
 def _say_empty(raw: RawTable, table: Table, findings: Findings) -> None:
@@ -92,18 +108,22 @@ def _say_empty(raw: RawTable, table: Table, findings: Findings) -> None:
         findings.fault(raw.label, what, cure, "empty table")
 
 
-def _check_header(raw: RawTable, table: Table, places: dict[str, int], findings: Findings) -> None:
+def _check_header(raw: RawTable, table: Table, places: dict[str, int], findings: Findings) -> set[str]:
+    """Say what is unknown or missing; return the known columns that seem to be misspelt."""
     where = f"{raw.label} header"
     known = {column.name for column in table.columns}
     unknown = [name for name in places if name not in known]
-    absent = [column.name for column in table.columns if column.required and column.name not in raw.header]
+    misspelt: set[str] = set()
     for count, name in enumerate(unknown):
-        likely = nearest(name, known - set(places)) if count < LISTED_PER_RULE else ""
+        likely = nearest(name, known - set(raw.header)) if count < LISTED_PER_RULE else ""
+        misspelt |= {column for column in known if likely == f"did you mean {column}?"}
         cure = likely or "a column whose name begins with note is your own"
         findings.fault(where, f"the column {shown(name)} is not known", cure, "unknown column")
-    for name in absent:
-        cure = f"add it ({table.column(name).meaning})"
-        findings.fault(where, f"the column {name} is missing", cure, "missing column")
+    for column in table.columns:
+        if column.required and column.name not in raw.header and column.name not in misspelt:
+            cure = f"add it ({column.meaning})"
+            findings.fault(where, f"the column {column.name} is missing", cure, "missing column")
+    return misspelt
 
 
 def _read_row(
@@ -133,7 +153,7 @@ def _read_row(
             faulty.add(column.name)
             record[column.name] = _STAND_IN if column.required else column.default
             where = f"{raw.label} row {row.number}, {column.name}{_who(raw, row, columns, column)}"
-            findings.fault(where, bad.what, bad.cure, "cell value")
+            findings.fault(where, bad.what, bad.cure, f"{raw.name} {column.name}")
     return faulty
 
 

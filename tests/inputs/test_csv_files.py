@@ -246,3 +246,33 @@ def test_hostile_sizes_are_refused_quickly(tmp_path: Path) -> None:
     start = time.process_time()
     assert len(check(folder).faults) > 40_000
     assert time.process_time() - start < 30  # a hang, not a benchmark: it takes about 1 s
+
+
+@pytest.mark.parametrize(
+    ("table", "words"),
+    [
+        ("Origin,Destination,Volume\nAAL,BRO,5\n", "write the names of columns in small letters"),
+        ("AAL,BRO,5\n", "no column of demand stands in the first row ('AAL', 'BRO', '5')"),
+        ("<html><body>gone</body></html>", "no column of demand stands in the first row"),
+        (b"PK\x03\x04\x14\x00", "is not text but a workbook or an archive"),
+        (
+            "origin;destination;volume\nAAL,BRO,5\n",
+            "separate it by semicolons like the header, not by commas",
+        ),
+    ],
+)
+def test_a_table_that_is_none_is_one_fault(table: str | bytes, words: str, tmp_path: Path) -> None:
+    (fault,) = check(write_folder(tmp_path, demand_csv=table)).faults
+    assert words in str(fault)
+
+
+def test_a_misspelt_column_or_setting_is_not_followed_by_what_its_absence_breaks(tmp_path: Path) -> None:
+    folder = write_folder(
+        tmp_path,
+        stations_csv="station,lat,lon,may_be_hubs\nAAL,50,8,yes\nBRO,51,9,no\n",
+        demand_csv="origin,destinaton,volume\nAAL,BRO,5\n",
+        settings_toml='[goal]\nunservd = "forbidden"\n[network]\nstructure = "hub-and-spoke"\n',
+    )
+    told = [str(fault) for fault in check(folder).faults]
+    assert len(told) == 3, told
+    assert all("did you mean" in line for line in told)

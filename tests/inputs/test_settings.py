@@ -63,11 +63,11 @@ def test_a_toml_fault_is_said_by_line(tmp_path: Path) -> None:
 
 def test_faults_name_the_line_of_their_setting(tmp_path: Path) -> None:
     text = "# a remark\n\n[network]  # another\nhubs = 2\r\n'hubs_max' = 1\n"
-    text += "\n[ mode.road ]\nfactor = 2\n[solve]\nhubs = 5\n"
+    text += "\n[ mode.road ]\nfactor = 2\n[solve]\ngoal = 5\n"
     told = [fault.where for fault in check(write_folder(tmp_path, settings_toml=text)).faults]
     assert "settings.toml line 4, [network] hubs" in told
     assert "settings.toml line 8, [mode.road] factor" in told
-    assert "settings.toml line 10, [solve] hubs" in told
+    assert "settings.toml line 10, [solve] goal" in told
 
 
 @pytest.mark.parametrize(
