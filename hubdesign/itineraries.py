@@ -13,6 +13,7 @@ from itertools import product
 import numpy as np
 from numpy.typing import NDArray
 
+from hubdesign.errors import Fault, InputError
 from hubdesign.network import Network
 from hubdesign.problem import UNLIMITED
 
@@ -23,7 +24,21 @@ Bools = NDArray[np.bool_]
 #: An itinerary this little longer than a limit still keeps it (float arithmetic).
 LIMIT_TOLERANCE = 1e-9
 
+#: More ways than this are refused in words: they would not fit a plain machine's memory.
+MOST_WAYS = 8_000_000
+
 _NONE = -1
+
+
+def too_many_ways(what: str, most: int, hubs: int) -> InputError:
+    """Return the refusal of a case whose ways to travel are too many to enumerate."""
+    fault = Fault(
+        "settings.toml [network] max_transfers",
+        f"more than {most:,} {what} ({hubs} stations may be hubs)",
+        "let fewer stations be hubs, allow fewer transfers, or set max_circuity or max_hours",
+        "too many itineraries",
+    )
+    return InputError([fault])
 
 
 @dataclass(frozen=True, slots=True)
@@ -85,7 +100,12 @@ def enumerate_itineraries(network: Network, max_transfers: int | None = None) ->
     if limit >= 1:
         parts += [_one_stop(network, lookup, hub) for hub in hubs]
     if limit >= 2:
-        parts += [_two_stops(network, lookup, first, second, local) for first, second in product(hubs, hubs)]
+        count = sum(len(part[0]) for part in parts)
+        for first, second in product(hubs, hubs):
+            parts.append(_two_stops(network, lookup, first, second, local))
+            count += len(parts[-1][0])
+            if count > MOST_WAYS:
+                raise too_many_ways("itineraries", MOST_WAYS, len(hubs))
     parts.append(_stays(network, np.flatnonzero(local)))
     demand = np.concatenate([part[0] for part in parts])
     legs = np.concatenate([part[1] for part in parts])

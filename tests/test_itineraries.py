@@ -6,7 +6,9 @@ import random
 from itertools import pairwise, permutations
 
 import numpy as np
+import pytest
 
+from hubdesign.errors import InputError
 from hubdesign.itineraries import enumerate_itineraries
 from hubdesign.network import Network, build_network
 from hubdesign.problem import Demand, ListedLink, Problem, Settings, Station, Vehicle
@@ -91,3 +93,10 @@ def test_lengths_and_hours_are_those_of_the_legs_and_stops() -> None:
         waiting = sum(network.station.transfer_h[hub] for hub in stops)
         assert abs(found.hours[row] - sum(network.leg.hours[leg] for leg in legs) - waiting) < 1e-12
         assert found.transfers[row] == len(stops)
+
+
+def test_a_case_with_too_many_itineraries_is_refused_in_words(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("hubdesign.itineraries.MOST_WAYS", 10)
+    with pytest.raises(InputError, match="more than 10 itineraries") as caught:
+        enumerate_itineraries(build_network(random_problem(1, max_transfers=2)))
+    assert "fewer stations be hubs" in caught.value.faults[0].cure

@@ -14,7 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from hubdesign import costs
-from hubdesign.itineraries import Itineraries
+from hubdesign.itineraries import MOST_WAYS, Itineraries, too_many_ways
 from hubdesign.network import Network
 from hubdesign.pricing import leg_factors
 
@@ -211,6 +211,9 @@ def build_leg_columns(network: Network, local: Itineraries) -> FlowColumns:
     origin (head not the destination) needs a station there that may be a hub.
     """
     matter = roles_matter(network)
+    if len(network.demand.volume) * len(network.leg.link) > MOST_WAYS:
+        hubs = int(network.station.may_be_hub.sum())
+        raise too_many_ways("pairs of a demand and a leg, with unlimited transfers,", MOST_WAYS, hubs)
     demand, leg, origin_role, destination_role = _leg_copies(network, matter)
     data, station = network.demand, network.station
     tail, head = network.leg.tail[leg], network.leg.head[leg]
