@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 
-def amount(value: float | None, digits: int = 4) -> str:
-    """Return a figure with thousands separators: whole above 1000, else `digits` significant digits."""
+def amount(value: float | None) -> str:
+    """Return a figure with thousands separators: whole from 10,000 on, two decimals from 1, else 4 digits."""
     if value is None:
         return "-"
-    if abs(value) >= 1000.0:
+    if abs(value) >= 10_000.0 or value == int(value):
         return f"{value:,.0f}"
-    text = f"{value:.{digits}g}"
-    return "0" if text == "-0" else text
+    if abs(value) >= 1.0:
+        return f"{value:,.2f}".rstrip("0").rstrip(".")
+    return f"{value:.4g}"
 
 
 def percent(share: float | None) -> str:
