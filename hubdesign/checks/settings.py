@@ -167,9 +167,9 @@ def check_least_cost_serves(case: Case) -> Iterator[Fault]:
     settings = case.problem.settings
     if settings.goal != "least-cost" or settings.unserved != "allowed":
         return
-    rows = [(i, row) for i, row in enumerate(case.problem.demands) if row.volume > 0]
+    rows = [(i, row) for i, row in enumerate(case.problem.demands) if row.volume > 0 and row.min_share < 1]
     blank = [i for i, row in rows if row.unserved_cost is None]
-    if settings.unserved_cost == 0 and (blank or not rows):
+    if settings.unserved_cost == 0 and blank:
         what = (
             f"0: least-cost with unserved = allowed would leave {len(blank):,} O-D rows unserved for nothing"
         )
