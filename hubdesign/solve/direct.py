@@ -138,7 +138,7 @@ class PhaseRun:
         if status is LpStatus.INFEASIBLE:
             return Design(Status.INFEASIBLE, progress=self.record.record)
         if status is LpStatus.OPTIMAL:
-            self.improve_bound(lp.objective)
+            self.improve_bound(lp.safe_bound())
         for point in found[:1]:
             self.offer(self._with_allocation_fixed(point, lp))
         rounded = round_up(self.model, lp, self.finisher)

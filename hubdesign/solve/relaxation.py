@@ -57,7 +57,9 @@ class Relaxation:
         self.highs.passModel(self._lp(coefficients))
         self.values: Floats = np.zeros(program.column_count)
         self.objective = -np.inf
-        self.row_count = program.rows.count
+        self._coefficients = coefficients
+        self._bounds = [program.lower, program.upper]
+        self._blocks = [(program.rows.matrix(program.column_count), program.rows.lower, program.rows.upper)]
 
     def _lp(self, coefficients: Floats) -> Any:
         lp = self._highspy.HighsLp()
@@ -134,17 +136,40 @@ class Relaxation:
             matrix.indices.astype(np.int32),
             np.asarray(matrix.data, dtype=np.float64),
         )
-        self.row_count += matrix.shape[0]
+        self._blocks.append((matrix, lower, upper))
 
     def set_bounds(self, columns: Ints, lower: Floats, upper: Floats) -> None:
         """Change the bounds of `columns`."""
         if len(columns):
+            self._bounds[0][columns], self._bounds[1][columns] = lower, upper
             self.highs.changeColsBounds(
                 len(columns),
                 np.asarray(columns, dtype=np.int32),
                 np.asarray(lower, dtype=np.float64),
                 self._finite(np.asarray(upper, dtype=np.float64)),
             )
+
+    def safe_bound(self) -> float:
+        """Return a lower bound on the LP's optimum that holds whatever the solver's tolerances did.
+
+        For any multipliers y, ``sum_i (y_i lower_i if y_i > 0 else y_i upper_i)`` plus, for each column, the
+        least of its reduced cost ``c - A'y`` times its bounds is a bound (weak duality; Neumaier and
+        Shcherbina 2004, Math. Programming 99:283-296). Multipliers on a missing side count as 0.
+        """
+        duals = self.row_duals()
+        reduced = self._coefficients.copy()
+        total, first = 0.0, 0
+        for matrix, lower, upper in self._blocks:
+            y = duals[first : first + matrix.shape[0]]
+            first += matrix.shape[0]
+            y = np.where((y > 0) & ~np.isfinite(lower), 0.0, np.where((y < 0) & ~np.isfinite(upper), 0.0, y))
+            side = np.where(y > 0, lower, upper)
+            total += float((y[y != 0.0] * side[y != 0.0]).sum())
+            reduced -= matrix.T @ y
+        low, high = self._bounds
+        at_best = np.where(reduced > 0, low, high)
+        used = reduced != 0.0
+        return total + float((reduced[used] * at_best[used]).sum())
 
     def separate(self, time_limit_s: float | None = None, rounds: int = 200) -> LpStatus:
         """Solve and add violated pool rows until none is left; `values` are then those of the strong LP."""
