@@ -56,7 +56,7 @@ def check_lengths_known(case: Case) -> Iterator[Fault]:
         what = f"blank, and the {count} to {some(others)} {'is' if len(others) == 1 else 'are'} needed"
         if problem.settings.fill_coordinates:
             what += f" ({row.station} is no IATA code of the airport table)"
-        cure = 'give lat and lon, or distance_km in the links table (links = "listed" makes other pairs unneeded)'
+        cure = 'give lat and lon, or distance_km in the links table (and links = "listed" for no other pairs)'
         yield from case.row("stations", i, "lat lon", what, cure)
 
 
