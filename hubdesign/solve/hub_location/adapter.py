@@ -1,10 +1,10 @@
 """From a Problem to a hub location instance and back: which inputs this engine serves, and the Design.
 
-Served: hub-and-spoke at least cost, all volume carried, at most two transfers (single allocation: two or
-unlimited, which is the same), no fleet, no link cost, capacity or must, no limit on money, links, hubs'
-volume, circuity or hours. Collection capacities go with single allocation only. Everything else is the direct
-engine's. Where several modes join two stations each direction takes the cheapest: nothing else tells them
-apart here.
+Served: hub-and-spoke at least cost, all volume carried, at most two transfers, no fleet, no link cost or
+must, no limit on money, circuity or hours, none that can bind on links or hubs' volume; collection capacities
+with single allocation only. Unlimited transfers are the same as two under single allocation, and where no
+detour over a third hub is cheaper than the leg it replaces. Everything else is the direct engine's. Where
+several modes join two stations each direction takes the cheapest: nothing else tells them apart here.
 """
 
 from __future__ import annotations
@@ -27,7 +27,11 @@ from hubdesign.solve.hub_location.instance import (
     Ints,
 )
 from hubdesign.solve.hub_location.multiple import solve_multiple
+from hubdesign.solve.hub_location.relaxation import build_relaxation
 from hubdesign.solve.hub_location.single import solve_single
+
+#: A detour cheaper by less than this share is rounding; the bound gives more away.
+DETOUR_TOLERANCE = 1e-12
 
 _STATUS = {HubStatus.INFEASIBLE: Status.INFEASIBLE, HubStatus.UNKNOWN: Status.UNKNOWN}
 
@@ -39,12 +43,11 @@ def fits(network: Network) -> bool:
 
 def _rules_fit(network: Network) -> bool:
     settings = network.problem.settings
-    transfers = (2, UNLIMITED) if settings.single_allocation else (2,)
     return (
         settings.structure == "hub-and-spoke"
         and settings.goal == "least-cost"
         and not settings.unserved_allowed
-        and settings.transfers_at_most in transfers
+        and settings.transfers_at_most in (2, UNLIMITED)
         and not network.problem.has_fleet
         and settings.max_circuity is None
         and settings.cost_limit is None
@@ -58,13 +61,14 @@ def _rules_fit(network: Network) -> bool:
 def _limits_fit(network: Network) -> bool:
     station = network.station
     hubs = station.may_be_hub
+    total = network.demand.volume.sum()
     single = network.problem.settings.single_allocation
     departures_free = not station.min_departures.any() and bool(np.isinf(station.max_departures).all())
     return (
         departures_free
-        and bool(np.isinf(station.max_links).all())
-        and bool(np.isinf(station.hub_capacity[hubs]).all())
-        and (single or bool(np.isinf(station.collection_capacity[hubs]).all()))
+        and bool((station.max_links >= len(network.link.tail)).all())
+        and bool((station.hub_capacity[hubs] >= total).all())
+        and (single or bool((station.collection_capacity[hubs] >= total).all()))
         and bool(np.isinf(network.demand.max_hours).all())
     )
 
@@ -72,7 +76,9 @@ def _limits_fit(network: Network) -> bool:
 def _links_fit(network: Network) -> bool:
     """Whether links carry freely, and none is missing where the instance could not tell."""
     link, data = network.link, network.demand
-    if link.fixed_cost.any() or link.must.any() or not np.isinf(link.capacity).all():
+    if link.fixed_cost.any() or link.must.any() or (link.capacity < data.volume.sum()).any():
+        return False
+    if network.problem.settings.transfers_at_most == UNLIMITED and not _two_transfers_suffice(network):
         return False
     local = (data.origin == data.destination) & (data.volume > 0.0)
     if network.station.volume_fee[data.origin[local]].any():
@@ -85,6 +91,18 @@ def _links_fit(network: Network) -> bool:
     busy = np.zeros(network.station_count, dtype=bool)
     busy[data.origin[moved]] = busy[data.destination[moved]] = True
     return complete or (bool(moved.all()) and bool(busy.all()))
+
+
+def _two_transfers_suffice(network: Network) -> bool:
+    """Whether more transfers never help: single allocation, or no transfer leg dearer than a detour."""
+    if network.problem.settings.single_allocation:
+        return True
+    instance = to_instance(network)
+    hubs = instance.hub_candidates
+    direct = instance.transfer[np.ix_(hubs, hubs)]
+    detour = build_relaxation(instance, closure=True).between.copy()
+    np.fill_diagonal(detour, 0.0)
+    return bool((direct <= detour * (1.0 + DETOUR_TOLERANCE)).all())
 
 
 def cheapest_legs(network: Network) -> Ints:
@@ -120,7 +138,9 @@ def to_instance(network: Network) -> HubInstance:
         fixed_cost=station.hub_fixed_cost,
         hubs_min=fewest,
         hubs_max=n if most is None else most,
-        collection_capacity=station.collection_capacity,
+        collection_capacity=np.where(
+            station.collection_capacity < data.volume.sum(), station.collection_capacity, np.inf
+        ),
         constant=float((data.volume * fees)[away].sum()),
     )
 

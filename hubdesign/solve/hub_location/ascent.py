@@ -16,6 +16,8 @@ integer z, and cheap for the open hubs. The best v is found by bisection on the 
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
 
 import numpy as np
@@ -49,27 +51,44 @@ class Cuts:
     u: Floats
 
 
-def make_cuts(relaxation: Relaxation, z: Floats, tie: Floats) -> Cuts:
-    """Return the cuts at `z` (K,); hubs of equal z are taken by decreasing `tie`."""
+def make_cuts(relaxation: Relaxation, z: Floats, tie: Floats, threads: int = 1) -> Cuts:
+    """Return the cuts at `z` (K,); hubs of equal z are taken by decreasing `tie`.
+
+    The result does not depend on `threads`.
+    """
     n, k = relaxation.volume.shape[0], len(relaxation.hubs)
     order = np.lexsort((-tie, -z))
     view, z = relaxation.restrict(order), z[order]
     support = max(1, int((z > SMALL).sum()))
     v, u = np.empty((n, n)), np.empty((n, k, n))
-    step = max(1, BLOCK // (n * max(k, support * support // 4)))
-    for start in range(0, n, step):
-        origins = np.arange(start, min(n, start + step))
+
+    def work(origins: Ints) -> None:
         pairs = pair_costs(view, origins, support)
         best = _best_level(pairs, z[:support])
         duals = np.empty((k, len(origins), n))
         _cover(pairs, best, duals.reshape(k, -1)[:support])
         level = best.reshape(len(origins), n)
         for hub in range(support, k):
-            lift(view, origins, level, duals, np.arange(hub), hub)
+            lift(view, origins, level, duals, hub)
         v[origins] = level
         u[origins[:, None], order] = duals.transpose(1, 0, 2)
+
+    over_origins(work, n, max(k, support * support // 4), threads)
     const, slope = weigh(relaxation, v, u)
     return Cuts(const, slope, v, u)
+
+
+def over_origins(work: Callable[[Ints], None], n: int, width: int, threads: int) -> None:
+    """Call `work` on blocks of origins whose arrays of `width` x origins x n stay in the cache."""
+    step = max(1, BLOCK // (n * width))
+    blocks = [np.arange(start, min(n, start + step)) for start in range(0, n, step)]
+    if threads == 1 or len(blocks) < 8:
+        for block in blocks:
+            work(block)
+        return
+    with ThreadPoolExecutor(threads) as pool:
+        for done in [pool.submit(work, block) for block in blocks]:
+            done.result()
 
 
 def weigh(relaxation: Relaxation, v: Floats, u: Floats) -> tuple[Floats, Floats]:
@@ -90,18 +109,18 @@ def pair_costs(view: Relaxation, origins: Ints, support: int) -> Floats:
     return pairs
 
 
-def lift(view: Relaxation, origins: Ints, level: Floats, duals: Floats, earlier: Ints, hub: int) -> None:
-    """Write ``duals[hub]`` so that it covers its pairs with the hubs `earlier`, whose duals stand.
+def lift(view: Relaxation, origins: Ints, level: Floats, duals: Floats, hub: int) -> None:
+    """Write ``duals[hub]`` so that it covers its pairs with the hubs before it, whose duals stand.
 
-    `level` is (origins, n), `duals` (K, origins, n); `earlier` positions among the K.
+    `level` is (origins, n), `duals` (K, origins, n).
     """
     entry, leave = view.entry[origins, hub][:, None], view.exit[hub]
     need = entry + view.between[hub, hub] + leave
-    if len(earlier):
-        known = duals[: len(earlier)] if earlier[-1] == len(earlier) - 1 else duals[earlier]
-        onward = known + (view.between[hub, earlier, None] + view.exit[earlier])[:, None, :]
+    if hub:
+        known = duals[:hub]
+        onward = known + (view.between[hub, :hub, None] + view.exit[:hub])[:, None, :]
         np.minimum(need, entry + onward.min(axis=0), out=need)
-        inward = (view.entry[np.ix_(origins, earlier)] + view.between[earlier, hub]).T
+        inward = view.entry[origins, :hub].T + view.between[:hub, hub, None]
         np.add(known, inward[:, :, None], out=onward)
         np.minimum(need, leave + onward.min(axis=0), out=need)
     need[np.arange(len(origins)), origins] = view.local[origins, hub]

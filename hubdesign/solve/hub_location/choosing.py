@@ -235,7 +235,7 @@ class AllocationMaster:
             changed = weights @ np.array(self.cuts)
         costs = self.choice.own + changed.reshape(n, k) + price * self.choice.load[:, None]
         fixed = self.choice.fixed.copy()
-        fixed[self.capped] -= (price * self.choice.capacity)[self.capped] if len(self.capped) else 0.0
+        fixed[self.capped] -= price[self.capped] * self.choice.capacity[self.capped]
         for cover, row in zip(self.covers, self._cover_rows):
             weight = max(-float(self._row_duals[row]), 0.0)
             costs[cover.members, cover.hub] += weight

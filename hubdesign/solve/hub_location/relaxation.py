@@ -90,6 +90,18 @@ class Relaxation:
         np.fill_diagonal(result, self.local[:, chosen].min(axis=1))
         return result
 
+    def trivial_bound(self) -> float:
+        """Return the scaled cost with every hub open but no more hub cost than must be, no constant."""
+        n, k = self.entry.shape
+        reach = np.array([(self.entry + self.between[:, hub]).min(axis=1) for hub in range(k)])
+        unit = np.full((n, n), np.inf)
+        for hub in range(k):
+            np.minimum(unit, reach[hub][:, None] + self.exit[hub], out=unit)
+        np.fill_diagonal(unit, self.local.min(axis=1))
+        least = np.sort(self.fixed)
+        hub_cost = float(least[: self.hubs_min].sum() + np.minimum(least[self.hubs_min :], 0.0).sum())
+        return float(np.vdot(self.volume, unit)) + hub_cost
+
     def cost(self, chosen: Ints) -> float:
         """Return the relaxed cost with the hubs at positions `chosen` open, without the constant."""
         return float(np.vdot(self.volume, self.unit_costs(chosen)) + self.fixed[chosen].sum())

@@ -7,7 +7,7 @@ from typing import Protocol
 import numpy as np
 
 from hubdesign.solve.control import Control
-from hubdesign.solve.hub_location.ascent import lift, make_cuts
+from hubdesign.solve.hub_location.ascent import lift, make_cuts, over_origins
 from hubdesign.solve.hub_location.instance import Floats, Ints
 from hubdesign.solve.hub_location.master import Bound, Domain, Master, Row, bound_over
 from hubdesign.solve.hub_location.relaxation import Relaxation
@@ -67,7 +67,7 @@ class Root:
         self.domain = self._domain()
         self.master = Master(self.core.fixed, len(relaxation.volume), self.domain)
         self.finished = False
-        self.value = -np.inf
+        self.value = relaxation.trivial_bound()
         self.point = np.zeros(len(chosen))
         self.centre = self._first_centre(starts)
 
@@ -110,7 +110,7 @@ class Root:
             self.control.report(bound=(shown + self.full.constant) / self.full.scale)
 
     def _cut(self, point: Floats) -> int:
-        cuts = make_cuts(self.core, point, self.centre)
+        cuts = make_cuts(self.core, point, self.centre, self.control.threads)
         z, eta = self.point, np.full(len(cuts.const), -np.inf)
         if self.master.rows:
             eta = self._eta
@@ -188,7 +188,10 @@ class Root:
         inside = len(self.position)
         view = self.full.restrict(np.concatenate((self.position, self.outside)))
         reduced = np.concatenate(
-            (bound.reduced, view.fixed[inside:] - outside_charges(view, averaged, inside))
+            (
+                bound.reduced,
+                view.fixed[inside:] - outside_charges(view, averaged, inside, self.control.threads),
+            )
         )
         whole = bound_over(bound.const, reduced, self._wider(len(self.outside)))
         left = whole.if_open[inside:] < self.incumbent.cutoff()
@@ -236,21 +239,27 @@ def average_rows(master: Master, origins: int, hubs: int) -> tuple[Floats, Float
     return v, u
 
 
-def outside_charges(view: Relaxation, averaged: tuple[Floats, Floats], inside: int) -> Floats:
+def outside_charges(
+    view: Relaxation, averaged: tuple[Floats, Floats], inside: int, threads: int = 1
+) -> Floats:
     """Return what the duals charge each hub of `view` from position `inside` on, scaled cost.
 
     Each is left what the core and the outside hubs before it do not cover of its pairs.
     """
     v, u = averaged
     n, k = view.entry.shape
-    charge = np.zeros(k - inside)
-    duals = np.empty((k, 1, n))
-    for i in range(n):
-        duals[:inside, 0] = u[i]
+    charge = np.zeros((n, k - inside))
+
+    def work(origins: Ints) -> None:
+        duals = np.empty((k, len(origins), n))
+        duals[:inside] = u[origins].transpose(1, 0, 2)
         for hub in range(inside, k):
-            lift(view, np.array([i]), v[i][None], duals, np.arange(hub), hub)
-        charge += duals[inside:, 0] @ view.volume[i]
-    return charge
+            lift(view, origins, v[origins], duals, hub)
+        charge[origins] = np.einsum("kbj,bj->bk", duals[inside:], view.volume[origins])
+
+    over_origins(work, n, k, threads)
+    total: Floats = charge.sum(axis=0)
+    return total
 
 
 def extend_row(view: Relaxation, row: Row, old: int) -> Row:
@@ -259,6 +268,6 @@ def extend_row(view: Relaxation, row: Row, old: int) -> Row:
     duals = np.empty((k, 1, n))
     duals[:old, 0] = row.u
     for hub in range(old, k):
-        lift(view, np.array([row.origin]), row.v[None], duals, np.arange(hub), hub)
+        lift(view, np.array([row.origin]), row.v[None], duals, hub)
     added = duals[old:, 0] @ view.volume[row.origin]
     return Row(row.origin, row.const, np.concatenate((row.slope, added)), row.v, duals[:, 0])

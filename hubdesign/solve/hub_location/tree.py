@@ -71,6 +71,7 @@ def _cut_node(root: Root, incumbent: Incumbent, domain: Domain, value: float) ->
         if turn and not whole and gained < 0.1 * (limit - value):
             break
         point = np.round(z) if whole else z
-        if not root.master.add(make_cuts(root.core, point, root.centre), z, eta, VIOLATION):
+        cuts = make_cuts(root.core, point, root.centre, root.control.threads)
+        if not root.master.add(cuts, z, eta, VIOLATION):
             break
     return value, domain, z
