@@ -112,10 +112,16 @@ def suspect_alike_codes(case: Case) -> Iterator[Fault]:
 
 
 def suspect_blank_coordinates(case: Case) -> Iterator[Fault]:
-    """A station without coordinates is not on the map."""
-    for i, row in enumerate(case.problem.stations):
-        if row.lat is None and row.lon is None:
-            yield from case.row("stations", i, "lat lon", "blank: it has no place on the map (null geometry)")
+    """Stations without coordinates are not on the map."""
+    rows = case.problem.stations
+    blank = [i for i, row in enumerate(rows) if row.lat is None and row.lon is None]
+    if len(blank) == 1:
+        what = "blank: it has no place on the map (null geometry)"
+        yield from case.row("stations", blank[0], "lat lon", what)
+    elif blank:
+        names = some((f"{rows[i].station} ({case.where('stations', i)})" for i in blank), 3)
+        what = f"{len(blank):,} stations have no coordinates and no place on the map (null geometry): {names}"
+        yield from case.table("stations", what)
 
 
 def suspect_listed_lengths(case: Case) -> Iterator[Fault]:

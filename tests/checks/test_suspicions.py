@@ -294,3 +294,16 @@ def test_a_one_way_link_without_a_way_back(tmp_path: Path) -> None:
         "links.csv row 5, direction (CEL-DOR air): one-way, and no vehicle type that serves it has a way"
         " back: it cannot be operated; list its way back, or remove it"
     ]
+
+
+def test_many_stations_without_coordinates_are_one_line(tmp_path: Path) -> None:
+    lines = _warned(
+        tmp_path,
+        stations_csv="station,may_be_hub\nAAL,yes\nBRO,no\nCEL,no\nDOR,no\n",
+        links_csv="from,to,distance_km\nAAL,BRO,190\nBRO,CEL,260\nCEL,DOR,350\nAAL,CEL,300\nAAL,DOR,400\n",
+        settings_toml='[network]\nlinks = "listed"\n' + SETTINGS,
+    )
+    assert lines == [
+        "stations.csv: 4 stations have no coordinates and no place on the map (null geometry):"
+        " AAL (row 2), BRO (row 3), CEL (row 4) and 1 more"
+    ]
