@@ -6,6 +6,7 @@ from pathlib import Path
 
 import pytest
 
+from hubdesign.checks.rules import CHECKS, rule_name
 from hubdesign.errors import EXIT_BAD_INPUT, InputError
 from hubdesign.inputs import check, listed_faults, read_case
 from tests.inputs.broken import BROKEN, FOLDER, KEPT, Broken
@@ -107,3 +108,8 @@ def test_a_fault_in_a_cell_is_not_followed_by_faults_of_its_stand_in(tmp_path: P
         "stations.csv row 3, lon (station BRO)",
         "stations.csv row 3, may_be_hub (station BRO)",
     ]
+
+
+def test_every_rule_has_a_broken_case() -> None:
+    broken = {fault.rule for case in KEPT for fault in check(FOLDER / case.name).faults}
+    assert {rule_name(rule) for rule in CHECKS} <= broken
