@@ -222,8 +222,14 @@ def improve_hubs(
     choice: Choice, opened: list[int], shortlist: Ints, stop: Callable[[], bool]
 ) -> tuple[float, Ints] | None:
     """Return the allocation after the best swaps, openings and closings of hubs among `shortlist`."""
-    best = allocate(choice, np.array(sorted(opened)))
     current = sorted(opened)
+    best = allocate(choice, np.array(current))
+    for hub in np.argsort(-choice.capacity, kind="stable"):
+        if best is not None or len(current) >= choice.hubs_max:
+            break
+        if hub not in current:
+            current = sorted([*current, int(hub)])
+            best = allocate(choice, np.array(current))
     while not stop():
         trials = [
             sorted([*(h for h in current if h != out), int(into)])

@@ -104,6 +104,8 @@ def solve_single(instance: HubInstance, control: Control, allocations: tuple[Int
     choice = Choice.of(relaxation, instance)
     incumbent = SingleIncumbent(instance, relaxation, choice, control)
     shortlist = np.argsort(promise, kind="stable")[:SHORTLIST]
+    if instance.has_capacity:
+        shortlist = np.union1d(shortlist, np.argsort(-choice.capacity, kind="stable")[: SHORTLIST // 2])
     found = improve_hubs(choice, starts[0], shortlist, control.stop_requested)
     if found is not None:
         incumbent.take(choice.hubs[found[1]])
