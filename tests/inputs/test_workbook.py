@@ -162,3 +162,9 @@ def test_openpyxl_itself_reads_our_template(tmp_path: Path) -> None:
     assert header.comment is not None
     assert "unit: degrees" in header.comment.text
     assert book["stations"]["A2"].number_format == "@"
+
+
+def test_settings_that_clash_are_named_by_their_row(tmp_path: Path) -> None:
+    settings = [*SETTINGS, ["network", "hubs", 1], ["network", "hubs_max", 2]]
+    (fault,) = check(save(tmp_path / "case.xlsx", sheets(settings=settings))).faults
+    assert fault.where == "sheet settings row 3, [network] hubs"
