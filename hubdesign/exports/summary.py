@@ -192,18 +192,23 @@ def _units(settings: Settings) -> dict[str, Any]:
 
 
 def _provenance(settings: Settings) -> dict[str, Any]:
+    return {
+        "settings": settings_in_force(settings),
+        "seed": settings.seed,
+        "threads": settings.threads or available_cores(),
+        "versions": library_versions(),
+    }
+
+
+def library_versions() -> dict[str, str]:
+    """Return the versions of this program, of Python and of the libraries that figures come from."""
     versions = {"hubdesign": hubdesign.__version__, "python": platform.python_version()}
     for name in _LIBRARIES:
         try:
             versions[name.lower()] = metadata.version(name)
         except metadata.PackageNotFoundError:
             continue
-    return {
-        "settings": settings_in_force(settings),
-        "seed": settings.seed,
-        "threads": settings.threads or available_cores(),
-        "versions": versions,
-    }
+    return versions
 
 
 def comparison_seconds(comparison: Comparison, read_s: float, write_s: float) -> Seconds:

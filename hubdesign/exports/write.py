@@ -11,6 +11,7 @@ from hubdesign.comparison import Comparison
 from hubdesign.errors import OutputError
 from hubdesign.exports.folder import Claim, check_target, claim_target, read_manifest, write_manifest
 from hubdesign.exports.geojson import write_maps
+from hubdesign.exports.report import PAGE, render_comparison_report, render_design_report
 from hubdesign.exports.summary import (
     Seconds,
     comparison_seconds,
@@ -165,6 +166,8 @@ def write_comparison(
         table = tabulate_comparison(comparison, results)
         write_csv(folder / "comparison.csv", table)
         write_comparison_workbook(folder / "tables.xlsx", comparison, table, results)
+        page = render_comparison_report(comparison, table, results, copied.files)
+        (folder / PAGE).write_bytes(page.encode("utf-8"))
         _copy_inputs(folder, copied)
         seconds = comparison_seconds(comparison, read_s, time.perf_counter() - start)
         write_json(folder / "comparison.json", comparison_summary(comparison, results, seconds))
@@ -185,6 +188,8 @@ def _fill_design(
         write_csv(folder / f"{table.name}.csv", table)
     write_maps(folder, result.network, results)
     write_design_workbook(folder / "tables.xlsx", result, results)
+    page = render_design_report(result, results, inputs.files, notes)
+    (folder / PAGE).write_bytes(page.encode("utf-8"))
     _copy_inputs(folder, inputs)
     seconds = Seconds(read_s, result.solve_s, result.cpu_s, time.perf_counter() - start)
     write_json(folder / "summary.json", design_summary(result, results, seconds, notes))

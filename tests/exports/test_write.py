@@ -125,9 +125,11 @@ def without_times(folder: Path) -> dict[str, bytes]:
             content = re.sub(rb'("(?:\w+_)?seconds": )[0-9.e-]+', rb"\1", content)
         if path.name == "progress.csv":
             content = re.sub(rb"(?m)^[0-9.e-]+,", b",", content)
+        if path.name == "report.html":
+            content = re.sub(rb"(?s)<!--time-->.*?<!--/time-->", b"", content)
         if path.name == "manifest.json":
             content = re.sub(
-                rb'("(?:.*/)?(?:summary.json|comparison.json|progress.csv|manifest.json)": )"\w+"',
+                rb'("(?:.*/)?(?:summary.json|comparison.json|progress.csv|manifest.json|report.html)": )"\w+"',
                 rb"\1",
                 content,
             )

@@ -89,9 +89,9 @@ def land_path(frame: Frame) -> str:
     # Panning and zooming out show a little more than the frame.
     view = box(-0.6 * frame.width, -0.6 * frame.height, 1.6 * frame.width, 1.6 * frame.height)
     pieces: list[Any] = []
-    for rings in _land():
-        shape = _projected(frame, rings[0], disc)
-        for hole in rings[1:]:
+    for outer, *holes in _land():
+        shape = _projected(frame, outer, disc)
+        for hole in holes:
             shape = shape.difference(_projected(frame, hole, disc))
         pieces.append(make_valid(shape).intersection(view))
     whole = unary_union(pieces).simplify(0.35)
@@ -142,7 +142,9 @@ def graticule_path(frame: Frame) -> tuple[str, float]:
     span_x = frame.width / frame.scale / 111.2
     reach = min(180.0, math.hypot(degrees, span_x))
     lat0, lon0 = frame.projection.lat0, frame.projection.lon0
-    lats = np.arange(math.ceil(max(-90.0, lat0 - reach) / step), math.floor(min(90.0, lat0 + reach) / step) + 1)
+    lats = np.arange(
+        math.ceil(max(-90.0, lat0 - reach) / step), math.floor(min(90.0, lat0 + reach) / step) + 1
+    )
     widest = min(180.0, reach / max(0.05, math.cos(math.radians(min(89.0, abs(lat0) + degrees / 2.0)))))
     lons = np.arange(math.ceil((lon0 - widest) / step), math.floor((lon0 + widest) / step) + 1)
     parallel = np.arange(lon0 - widest, lon0 + widest + fine, fine)

@@ -76,7 +76,7 @@ def place_labels(
             if best is None or cost < best[0]:
                 best = (cost, side, box)
         side = "e" if best is None else best[1]
-        left, right, up, anchor = SIDES[side]
+        _, right, up, anchor = SIDES[side]
         away = float(radius[i]) + _GAP
         result[i] = Label(right * away, up * (away + 5.0) + 4.3, anchor, best is not None)
         if best is not None:

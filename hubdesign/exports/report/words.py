@@ -94,4 +94,4 @@ def goal_unit(settings: Settings) -> str:
 
 def heading(name: str) -> str:
     """Return a column's name as a heading: ``volume_out`` is "volume out"."""
-    return name.replace("_", " ")
+    return name.replace("_", " ").replace("co2", "CO2")
