@@ -183,6 +183,7 @@ def suspect_beyond_capacity(case: Case, network: Network) -> Iterator[Fault]:
                 cure = "raise max_departures, max_frequency or capacities, or expect unserved volume"
                 yield from case.row("stations", i, "station", what, cure)
     yield from _fleet_room(case, network, float(data.volume[away].sum()))
+    yield from _collection_room(case, network, float(data.volume.sum()))
 
 
 def _room(network: Network, departing: bool) -> Floats:
@@ -203,6 +204,20 @@ def _room(network: Network, departing: bool) -> Floats:
         by_limit = network.station.max_departures[limited] * biggest[limited] * settings.max_load_factor
         result[limited] = np.minimum(result[limited], by_limit)
     return result
+
+
+def _collection_room(case: Case, network: Network, volume: float) -> Iterator[Fault]:
+    """In hub-and-spoke all volume is collected by a hub: the largest hubs allowed bound what is carried."""
+    if case.problem.settings.structure != "hub-and-spoke":
+        return
+    most = case.problem.settings.hub_count[1]
+    rooms = np.sort(network.station.collection_capacity[network.station.may_be_hub])[::-1][:most]
+    if volume > float(rooms.sum()) * (1 + 1e-9):
+        which = "all stations that may be hubs" if most is None else f"the {most} largest hub(s)"
+        what = (
+            f"{which} collect {rooms.sum():,.10g} at most (collection_capacity); the demand is {volume:,.10g}"
+        )
+        yield from case.table("stations", what, "raise collection_capacity, or expect unserved volume")
 
 
 def _fleet_room(case: Case, network: Network, volume: float) -> Iterator[Fault]:

@@ -170,6 +170,15 @@ def test_demand_beyond_the_capacities_of_links(tmp_path: Path) -> None:
     assert any("(station AAL): 120 leave here, but no more than 70 can" in line for line in lines)
 
 
+def test_demand_beyond_what_hubs_may_collect(tmp_path: Path) -> None:
+    stations = STATIONS.replace("may_be_hub", "may_be_hub,collection_capacity").replace(",yes", ",yes,150")
+    stations = stations.replace(",no", ",no,")
+    settings = SETTINGS + "[network]\nstructure = 'hub-and-spoke'\nhubs_max = {}\n"
+    (line,) = _warned(tmp_path, stations_csv=stations, settings_toml=settings.format(1))
+    assert line.startswith("stations.csv: the 1 largest hub(s) collect 150 at most (collection_capacity);")
+    assert "the demand is 260" in line
+
+
 def test_demand_beyond_the_fleet(tmp_path: Path) -> None:
     fleet = "vehicle,capacity,speed_kmh,available,hours_per_vehicle,cost_per_hour\ngull-10,10,100,1,10,5\n"
     lines = _warned(tmp_path, fleet_csv=fleet)
