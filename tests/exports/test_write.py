@@ -129,7 +129,7 @@ def without_times(folder: Path) -> dict[str, bytes]:
             content = re.sub(rb"(?s)<!--time-->.*?<!--/time-->", b"", content)
         if path.name == "manifest.json":
             content = re.sub(
-                rb'("(?:.*/)?(?:summary.json|comparison.json|progress.csv|manifest.json|report.html)": )"\w+"',
+                rb'("(?:.*/)?(?:(?:summary|comparison|manifest).json|progress.csv|report.html)": )"\w+"',
                 rb"\1",
                 content,
             )
