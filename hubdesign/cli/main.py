@@ -200,6 +200,23 @@ def verify(outputs: Path, as_json: bool) -> None:
 
 @main.command()
 @_OUTPUTS
+def view(outputs: Path) -> None:
+    """Open the page of a result; print its path where there is no browser.
+
+    \b
+    Example:
+      hubdesign view outputs/islands
+    """
+    with told_in_words(False):
+        from hubdesign.exports.report import open_page, page_of
+
+        page = page_of(outputs)
+        opened = open_page(page)
+        click.echo(f"opened {page}" if opened else f"{page} (no browser here to open it in)")
+
+
+@main.command()
+@_OUTPUTS
 @click.option(
     "--to",
     "to",

@@ -215,10 +215,24 @@ def test_targets_that_are_not_ours_are_refused(case: Path, tmp_path: Path) -> No
     shutil.rmtree(foreign)
 
 
-@pytest.mark.parametrize("command", ["new", "check", "design", "compare", "verify", "export"])
+@pytest.mark.parametrize("command", ["new", "check", "design", "compare", "verify", "view", "export"])
 def test_every_command_has_an_example_in_its_help(command: str) -> None:
     for flag in ("-h", "--help"):
         outcome = run(command, flag)
         assert outcome.exit_code == 0
         assert "Example:" in outcome.stdout
         assert f"hubdesign {command}" in outcome.stdout
+
+
+def test_view_opens_the_page_or_prints_its_path(
+    case: Path, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    assert run("design", case, "-o", tmp_path / "result").exit_code == 0
+    asked: list[str] = []
+    monkeypatch.setattr("webbrowser.open", lambda address: bool(asked.append(address)))
+    outcome = run("view", tmp_path / "result")
+    assert outcome.exit_code == 0
+    assert str(tmp_path / "result/report.html") in outcome.stdout
+    assert "no browser" in outcome.stdout
+    assert asked == [(tmp_path / "result/report.html").as_uri()]
+    assert run("view", tmp_path).exit_code == errors.EXIT_BAD_INPUT
