@@ -1,0 +1,301 @@
+"""The bound side: a tree over hubs and fleet on the warm LP; its leaves are solved by SCIP in slices.
+
+The tree partitions the plans by bounds on whole columns; every node's bound is proven by duals
+(:meth:`hubdesign.solve.carrier.linear.LinearModel.dual_bound`) or by SCIP on the node's own sub-model, whose
+rows are those of the model and cuts that hold everywhere. The smallest bound of the nodes open, in work, or
+left as good enough bounds every plan. A SCIP run ends "infeasible" where no plan of the leaf beats the
+limit it was given: the limit is then the leaf's bound.
+
+Nodes may be worked on by two threads: one owns the LP, any may take a leaf.
+"""
+
+from __future__ import annotations
+
+import heapq
+import logging
+import threading
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from hubdesign.solve.carrier.bounding import Bounder
+from hubdesign.solve.carrier.planning import branching_priorities
+from hubdesign.solve.carrier.restricted import Restricted
+from hubdesign.solve.carrier.setting import RowSet, Setting
+from hubdesign.solve.relaxation import LpStatus
+from hubdesign.solve.scip import MipEnd, MipStatus
+
+Floats = NDArray[np.float64]
+Ints = NDArray[np.int64]
+
+_LOG = logging.getLogger(__name__)
+
+_WHOLE = 1e-6
+
+#: Separation rounds of a node and the relative gain below which they end.
+_NODE_ROUNDS = 4
+_NODE_GAIN = 1e-4
+
+#: SCIP nodes of a leaf's first slice; each further slice adds as many as all before.
+_SLICE = 500
+
+#: Plans come from elsewhere: SCIP's dear heuristics cost a leaf half its nodes.
+_LEAF_SETTINGS = {
+    f"heuristics/{name}/freq": -1
+    for name in (
+        "actconsdiving",
+        "adaptivediving",
+        "alns",
+        "coefdiving",
+        "conflictdiving",
+        "crossover",
+        "distributiondiving",
+        "farkasdiving",
+        "feaspump",
+        "fracdiving",
+        "gins",
+        "guideddiving",
+        "linesearchdiving",
+        "lpface",
+        "nlpdiving",
+        "objpscostdiving",
+        "pscostdiving",
+        "rens",
+        "rins",
+        "rootsoldiving",
+        "veclendiving",
+    )
+}
+
+
+@dataclass
+class Leaf:
+    """A node with whole hubs and fleet: its bounds, the rows it was bounded with, its SCIP run."""
+
+    lower: Floats
+    upper: Floats
+    rows: RowSet
+    nodes: int = 0
+    model: Restricted | None = None
+
+
+@dataclass(order=True)
+class Node:
+    """Bounds on whole columns, with a proven bound (scaled) on every plan inside."""
+
+    bound: float
+    number: int
+    fixings: dict[int, tuple[float, float]] = field(compare=False)
+    leaf: Leaf | None = field(default=None, compare=False)
+
+
+class Tree:
+    """Best-first search over `bounder`.
+
+    `on_hubs` hears of each node whose hubs have all become whole: bound and LP values.
+    """
+
+    def __init__(
+        self,
+        setting: Setting,
+        bounder: Bounder,
+        bound: float,
+        on_hubs: Callable[[float, Floats], None] | None = None,
+        after_node: Callable[[], None] | None = None,
+    ) -> None:
+        self.setting, self.bounder = setting, bounder
+        self.heap: list[Node] = [Node(bound, 0, {})]
+        self.left = np.inf  # smallest bound of the nodes left as good enough
+        self.count = 0
+        self.nodes = 0
+        self.finished = False
+        self._on_hubs, self._after_node = on_hubs, after_node
+        self._in_work: dict[int, float] = {}
+        self._lock = threading.RLock()
+        self._moved = threading.Condition(self._lock)
+
+    # -- shared ----------------------------------------------------------------------------------------
+
+    @property
+    def bound(self) -> float:
+        """The proven bound (scaled) on every plan."""
+        with self._lock:
+            top = self.heap[0].bound if self.heap else np.inf
+            return min(self.left, top, min(self._in_work.values(), default=np.inf), self.setting.cutoff)
+
+    def _take(self, leaves_only: bool) -> Node | None:
+        """Return the open node of the weakest bound (the weakest leaf), None where there is none."""
+        with self._lock:
+            target = self.setting.target
+            while self.heap and self.heap[0].bound >= target:
+                self._leave(heapq.heappop(self.heap))
+            if not self.heap:
+                return None
+            if leaves_only:
+                leaves = [node for node in self.heap if node.leaf is not None and node.bound < target]
+                if not leaves:
+                    return None
+                node = min(leaves)
+                self.heap.remove(node)
+                heapq.heapify(self.heap)
+            else:
+                node = heapq.heappop(self.heap)
+            self._in_work[node.number] = node.bound
+            return node
+
+    def _leave(self, node: Node) -> None:
+        """Close a node whose bound stays as it is."""
+        self.left = min(self.left, node.bound)
+        if node.leaf is not None and node.leaf.model is not None:
+            node.leaf.model.free()
+            node.leaf.model = None
+
+    def _done(self, node: Node, again: bool) -> None:
+        with self._lock:
+            self._in_work.pop(node.number, None)
+            if again:
+                heapq.heappush(self.heap, node)
+            self._moved.notify_all()
+        self.setting.improve_bound(self.bound)
+
+    # -- the bound side --------------------------------------------------------------------------------
+
+    def run(self) -> bool:
+        """Work until the gap is proven, nothing is open, or time is out; whether the tree is finished."""
+        setting = self.setting
+        while True:
+            setting.improve_bound(self.bound)
+            if setting.control.stop_requested() or setting.bound >= setting.target:
+                break
+            node = self._take(leaves_only=False)
+            if node is None:
+                with self._lock:
+                    if not self.heap and not self._in_work:
+                        self.finished = True
+                        break
+                    self._moved.wait(0.05)
+                continue
+            again = self._leaf(node) if node.leaf is not None else self._bound(node)
+            self._done(node, again)
+            if self._after_node is not None:
+                self._after_node()
+        setting.improve_bound(self.bound)
+        return self.finished
+
+    def help(self) -> bool:
+        """Work on one leaf for a slice; whether there was one. May be called from a second thread."""
+        node = self._take(leaves_only=True)
+        if node is None:
+            return False
+        self._done(node, self._leaf(node))
+        return True
+
+    def _bound(self, node: Node) -> bool:
+        """Bound a node by its LP, then branch, close or hand on; True where it stays open as it is."""
+        setting = self.setting
+        self.bounder.fix(node.fixings)
+        end = self.bounder.rounds(_NODE_ROUNDS, least_gain=_NODE_GAIN, enough=lambda: setting.target)
+        self.nodes += 1
+        if end.status is LpStatus.INFEASIBLE:
+            return False
+        node.bound = max(node.bound, end.bound)
+        if end.status is not LpStatus.OPTIMAL:
+            return True
+        values = self.bounder.lp.values
+        _LOG.debug(
+            "node %d at %.1f s: bound %.6g, %d rows, fleet %s",
+            node.number,
+            setting.control.elapsed_s(),
+            setting.objective.value_of(node.bound),
+            self.bounder.lp.row_count,
+            values[setting.of.vehicles].round(2),
+        )
+        if node.bound >= setting.target:
+            self._leave(node)
+            return False
+        column = self._hub_or_fleet(node, values)
+        if column is None:
+            return self._make_leaf(node, values)
+        self._branch(node, column, float(values[column]))
+        return False
+
+    def _hub_or_fleet(self, node: Node, values: Floats) -> int | None:
+        """Return the most fractional hub, else the fleet count that weighs most, None where all are whole."""
+        setting = self.setting
+        away = _distance(values[setting.of.hub])
+        if (away > _WHOLE).any():
+            return int(setting.of.hub[int(np.argmax(away))])
+        if self._on_hubs is not None and not any(c in node.fixings for c in setting.of.vehicles.tolist()):
+            self._on_hubs(node.bound, values)
+        away = _distance(values[setting.of.vehicles])
+        weight = 1e-9 + setting.objective.coefficients[setting.of.vehicles]
+        if (away > _WHOLE).any():
+            return int(setting.of.vehicles[int(np.argmax(np.where(away > _WHOLE, away * weight, -1.0)))])
+        return None
+
+    def _branch(self, node: Node, column: int, value: float) -> None:
+        low, high = self.bounder.lower[column], self.bounder.upper[column]
+        down, up = np.floor(value), np.floor(value) + 1.0
+        with self._lock:
+            for bounds in ((float(low), float(down)), (float(up), float(high))):
+                if bounds[0] <= bounds[1]:
+                    self.count += 1
+                    heapq.heappush(self.heap, Node(node.bound, self.count, {**node.fixings, column: bounds}))
+
+    # -- leaves ----------------------------------------------------------------------------------------
+
+    def _make_leaf(self, node: Node, values: Floats) -> bool:
+        setting = self.setting
+        if not (_distance(values[setting.integer]) > _WHOLE).any():
+            setting.offer(values)
+            self._leave(node)
+            return False
+        lp = self.bounder.lp
+        node.leaf = Leaf(self.bounder.lower.copy(), self.bounder.upper.copy(), lp.tight())
+        return True
+
+    def _leaf(self, node: Node) -> bool:
+        """Solve a leaf for a slice; True where it stays open."""
+        setting, leaf = self.setting, node.leaf
+        assert leaf is not None
+        limit = setting.target
+        leaf.nodes = max(_SLICE, 2 * leaf.nodes)
+        end = self._slice(leaf, limit)
+        proven = min(end.bound, limit)
+        node.bound = max(node.bound, proven)
+        _LOG.debug(
+            "leaf %d at %.1f s: %s, bound %.6g, %d nodes",
+            node.number,
+            setting.control.elapsed_s(),
+            end.status.value,
+            setting.objective.value_of(node.bound),
+            leaf.nodes,
+        )
+        if end.status is MipStatus.LIMIT and node.bound < setting.target:
+            return True
+        self._leave(node)
+        return False
+
+    def _slice(self, leaf: Leaf, limit: float) -> MipEnd:
+        setting = self.setting
+        if leaf.model is not None:
+            return leaf.model.resume(leaf.nodes, limit)
+        leaf.model = Restricted(setting, leaf.lower, leaf.upper, self.bounder.lp, leaf.rows)
+        leaf.model.set_priorities(branching_priorities(setting))
+
+        def hear(point: Floats) -> None:
+            setting.offer(point)
+
+        return leaf.model.run(
+            setting.control,
+            objective_limit=limit if np.isfinite(limit) else None,
+            on_plan=hear,
+            settings={"limits/totalnodes": leaf.nodes, **_LEAF_SETTINGS},
+        )
+
+
+def _distance(values: Floats) -> Floats:
+    """Return the distance to the nearest whole number."""
+    return np.asarray(np.abs(values - np.round(values)))
