@@ -56,9 +56,21 @@ def volume_per_period(settings: Settings) -> Markup:
 def headline(result: Result, results: Results) -> Markup:
     """Return the answer of a design in one sentence."""
     verb = "Today's network runs" if result.problem.settings.structure == "current" else "Operate"
-    return Markup("{} {} with {}: the plan {}.").format(
-        verb, say_count(len(results.links.rows), "link"), _say_hubs(results), goal_words(result, results)
+    return Markup("{} {} with {}: the plan {}{}.").format(
+        verb,
+        say_count(len(results.links.rows), "link"),
+        _say_hubs(results),
+        goal_words(result, results),
+        _within(result, results),
     )
+
+
+def _within(result: Result, results: Results) -> str:
+    """Return how far that is proven, in a few words; blank for today's network."""
+    gap = results.answer["gap"]
+    if gap is None or result.problem.settings.structure == "current":
+        return ""
+    return ", and no plan is better" if gap == 0.0 else f", proven within {say_share(gap)} of the best"
 
 
 def goal_words(result: Result, results: Results) -> Markup:

@@ -12,7 +12,7 @@ from hubdesign.pricing import Bill
 from hubdesign.results import Results
 
 PLOT_WIDTH, PLOT_HEIGHT = 460.0, 260.0
-_LEFT, _RIGHT, _TOP, _BOTTOM = 64.0, 14.0, 14.0, 42.0
+_LEFT, _RIGHT, _TOP, _BOTTOM = 64.0, 14.0, 24.0, 42.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -141,7 +141,7 @@ def progress_curves(results: Results, unit: str) -> Curves | None:
     rows = results.progress.records()
     best = [(float(r["seconds"] or 0), float(r["best_plan"])) for r in rows if r["best_plan"] is not None]
     bound = [(float(r["seconds"] or 0), float(r["bound"])) for r in rows if r["bound"] is not None]
-    if not best or not bound:
+    if not best or not bound or len(set(best + bound)) < 3:
         return None
     end = max(float(r["seconds"] or 0) for r in rows)
     low, high = _telling_range([v for _, v in best], [v for _, v in bound])

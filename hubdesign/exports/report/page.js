@@ -188,7 +188,7 @@ const draw = () => {
     svg.setAttribute("viewBox", `${view.x.toFixed(2)} ${view.y.toFixed(2)} ${view.w.toFixed(2)} ${view.h.toFixed(2)}`);
     svg.parentElement.classList.toggle("near", view.w < whole.w * 0.999);
     if (!shown(svg)) continue;
-    const k = view.w / svg.clientWidth, s = Math.min(1, Math.max(0.5, svg.clientWidth / 900));
+    const k = view.w / svg.clientWidth, s = Math.min(1, Math.max(0.6, Math.sqrt(svg.clientWidth / 900)));
     svg.style.setProperty("--k", k.toFixed(4));
     svg.style.setProperty("--q", (k * s).toFixed(4));
     const legend = document.querySelector(".legend");
@@ -209,7 +209,7 @@ const measure = (svg, k) => {
 const SIDES = [[1, 0, "start"], [-1, 0, "end"], [0, -1, "middle"], [0, 1, "middle"],
   [.75, -.75, "start"], [.75, .75, "start"], [-.75, -.75, "end"], [-.75, .75, "end"]];
 const place = (svg, k, s) => {
-  const width = svg.clientWidth, height = width * view.h / view.w, taken = [];
+  const width = svg.clientWidth, height = width * view.h / view.w, taken = [[width - 46, 0, width, 118]]; // the buttons
   const items = all(".l", svg).map(group => {
     group.own ??= {text: group.firstElementChild, at: group.transform.baseVal[0].matrix, dx: +group.firstElementChild.getAttribute("x"),
       dy: +group.firstElementChild.getAttribute("y"), anchor: group.firstElementChild.getAttribute("text-anchor"), m: +group.dataset.m,

@@ -178,7 +178,8 @@ def _overlays(comparison: Comparison, results: dict[str, Results], sheet: Sheet 
     ranked = [entry.structure for entry in answer.ranked_entries(comparison)]
     order = [name for name in ranked if name in results] + [name for name in results if name not in ranked]
     rows = link_rows(results)
-    return [overlay(first, second, results, sheet, rows) for first, second in combinations(order, 2)]
+    drawn = [overlay(first, second, results, sheet, rows) for first, second in combinations(order, 2)]
+    return sorted(drawn, key=lambda pair: pair.counts["first"] + pair.counts["second"] == 0)
 
 
 def _cost_rows(results: dict[str, Results]) -> list[tuple[str, list[charts.Bar | None]]]:

@@ -33,7 +33,9 @@ class Format:
 
 def format_for(column: Column, values: Iterable[Cell]) -> Format:
     """Return the format of a column: shares in per cent, else about four digits of its largest figure."""
-    if column.kind == "integer":
+    values = list(values)
+    whole = all(float(value).is_integer() for value in values if isinstance(value, (int, float)))
+    if column.kind == "integer" or (whole and column.unit != "share"):
         return Format(0)
     sizes = [abs(value) for value in values if isinstance(value, (int, float)) and value]
     if column.unit == "share":
