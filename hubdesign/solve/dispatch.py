@@ -24,6 +24,7 @@ def solve(
     starts
         Plans on the same candidates to start from; none better is ever left behind.
     """
+    from hubdesign.solve import carrier
     from hubdesign.solve.direct import solve_direct
     from hubdesign.solve.hub_location.adapter import fits, solve_hub_location
 
@@ -31,4 +32,6 @@ def solve(
     control.maximise = problem.settings.goal != "least-cost"
     if fits(network):
         return solve_hub_location(network, control, starts)
+    if carrier.fits(problem):
+        return carrier.solve(problem, network, control, starts)
     return solve_direct(network, control, starts)

@@ -25,7 +25,7 @@ def test_an_interrupted_solve_writes_its_best_plan(number: signal.Signals, tmp_p
     case = tmp_path / "case"
     copytree(ROOT / "inputs/us40", case)
     change(case, "settings.toml", "time_limit_s = 30", "time_limit_s = 600")
-    change(case, "settings.toml", "gap = 0.01", "gap = 0.0")
+    change(case, "settings.toml", "gap = 0.05", "gap = 0.0")
     environment = {**os.environ, "PYTHONPATH": str(ROOT)}
     command = [sys.executable, "-m", "hubdesign", "design", str(case), "-o", str(tmp_path / "result")]
     process = subprocess.Popen(
