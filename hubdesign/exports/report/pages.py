@@ -168,7 +168,7 @@ def total_figures(results: Results, settings: Settings) -> list[Figure]:
     figures = []
     for name in _FIGURES:
         value = results.totals[name]
-        if value is not None:
+        if value is not None and (value or name != "yield_per_volume_km"):
             figures.append(say_total(columns[name], value, settings))
     return figures
 

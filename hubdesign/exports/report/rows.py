@@ -155,8 +155,9 @@ def columns_html(
 
 def body_html(shown: Sequence[Sequence[str]], count: int) -> Markup:
     """Return rows of HTML from columns of escaped cells; end tags that HTML does not ask for are left out."""
-    rows = ("<tr><td>" + "<td>".join(column[row] for column in shown) for row in range(count))
-    return Markup("\n".join(rows))
+    # The line break stands where it is no part of a cell.
+    rows = ("<tr>\n<td>" + "<td>".join(column[row] for column in shown) for row in range(count))
+    return Markup("".join(rows))
 
 
 def _cell(value: Cell, style: Format) -> str:

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import itertools
+import math
 import random
 from functools import cache
 
-from hubdesign.design import Design, Flow, Progress, Status
+from hubdesign.design import Design, Flow, Frequency, Progress, Status
 from hubdesign.network import build_network
 from hubdesign.pricing import price
 from hubdesign.problem import Demand, Problem, Settings, Station
@@ -63,3 +64,51 @@ def large_result(stations: int = LARGE_STATIONS) -> Result:
     bill = price(network, draft)
     design = draft.replace(objective=bill.total_cost, bound=0.93 * bill.total_cost)
     return Result(problem, network, design, bill, (), 9.0, 8.0)
+
+
+def star_result(problem: Problem) -> Result:
+    """Return a plan put together by hand: every station at its nearest hub, hubs joined to each other.
+
+    The page must show any plan; nothing is said about how good it is.
+    """
+    network = build_network(problem)
+    n, leg, may = network.station_count, network.leg, network.station.may_be_hub
+    ends = {(int(a), int(b)): place for place, (a, b) in enumerate(zip(leg.tail, leg.head))}
+    length = network.link.distance_km
+    hubs = [i for i in range(n) if may[i]] or [0]
+
+    def nearest(i: int) -> int | None:
+        reached = [h for h in hubs if (i, h) in ends]
+        return i if i in hubs else min(reached, key=lambda h: length[leg.link[ends[i, h]]], default=None)
+
+    own, flows, load = [nearest(i) for i in range(n)], [], dict.fromkeys(range(len(leg.link)), 0.0)
+    for place, demand in enumerate(problem.demands):
+        o, d = network.index[demand.origin], network.index[demand.destination]
+        stops = [o, own[o], own[d], d]
+        pairs = [(a, b) for a, b in itertools.pairwise(stops) if a != b]
+        if None in stops or any(pair not in ends for pair in pairs):
+            continue
+        legs = tuple(ends[pair] for pair in pairs)  # type: ignore[index]
+        share = 1.0 if place % 3 else 0.75
+        flows.append(Flow(place, legs, share))
+        for used in legs:
+            load[used] += share * demand.volume
+    links = sorted({int(leg.link[place]) for place, volume in load.items() if volume})
+    frequencies = []
+    for link in links if problem.has_fleet else ():
+        service = max(network.services_of[link], key=lambda s: network.service.capacity[s])
+        most = max(load[place] for place in range(len(leg.link)) if leg.link[place] == link)
+        frequencies.append(Frequency(service, math.ceil(most / network.service.capacity[service])))
+    draft = Design(
+        Status.FEASIBLE,
+        hubs=tuple(h for h in hubs if any(load[p] for p in load if h in (leg.tail[p], leg.head[p]))),
+        links=tuple(links),
+        frequencies=tuple(sorted(frequencies, key=lambda row: row.service)),
+        flows=tuple(flows),
+        progress=(Progress(1.0, 1e6, 5e5), Progress(2.0, 9e5, 6e5), Progress(9.0, 8e5, 7e5)),
+        method="put together by hand",
+    )
+    bill = price(network, draft)
+    worth = bill.profit if problem.settings.goal == "most-profit" else bill.total_cost
+    bound = worth + abs(worth) * (0.05 if problem.settings.goal == "most-profit" else -0.05)
+    return Result(problem, network, draft.replace(objective=worth, bound=bound), bill, (), 9.0, 8.0)
