@@ -22,13 +22,16 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from hubdesign.solve.hub_location.instance import Floats, Ints
+from hubdesign.solve.hub_location.instance import Bools, Floats, Ints
 from hubdesign.solve.hub_location.relaxation import Relaxation
 
 #: Numbers in a working array: one block of O-D pairs stays in the cache.
 BLOCK = 120_000
 #: Bisections of v; the dual loses at most 2**-9 of the range of path costs.
 BISECTIONS = 9
+#: Evaluations of v where the last cut's v is the first guess, and the first step from it, of the range.
+FROM_GUESS = 6
+FIRST_STEP = 1.0 / 32.0
 #: A hub below this value is left out of the choice of v (never out of the cut).
 SMALL = 0.02
 
@@ -51,31 +54,72 @@ class Cuts:
     u: Floats
 
 
-def make_cuts(relaxation: Relaxation, z: Floats, tie: Floats, threads: int = 1) -> Cuts:
-    """Return the cuts at `z` (K,); hubs of equal z are taken by decreasing `tie`.
+def make_cuts(
+    relaxation: Relaxation,
+    z: Floats,
+    tie: Floats,
+    threads: int = 1,
+    careful: Bools | None = None,
+    guess: Floats | None = None,
+) -> Cuts:
+    """Return the cuts at `z` (K,); the result does not depend on `threads`.
 
-    The result does not depend on `threads`.
+    Parameters
+    ----------
+    relaxation
+        The costs.
+    z
+        The point, (K,).
+    tie
+        (K,); hubs of equal z are taken by decreasing `tie`.
+    threads
+        Cores to use.
+    careful
+        (K,), the hubs to charge as little as may be (all by default); the others, 0 in z, cover each of
+        their pairs alone, which is quicker and as valid.
+    guess
+        (n, n), where to look for v first.
     """
     n, k = relaxation.volume.shape[0], len(relaxation.hubs)
-    order = np.lexsort((-tie, -z))
+    careful = np.ones(k, dtype=bool) if careful is None else careful | (z > 0.0)
+    order = np.lexsort((-tie, -z, ~careful))
     view, z = relaxation.restrict(order), z[order]
-    support = max(1, int((z > SMALL).sum()))
+    support, exact = max(1, int((z > SMALL).sum())), int(careful.sum())
     v, u = np.empty((n, n)), np.empty((n, k, n))
+    alone = _cheapest_use(view, exact)
 
     def work(origins: Ints) -> None:
         pairs = pair_costs(view, origins, support)
-        best = _best_level(pairs, z[:support])
+        best = _best_level(pairs, z[:support], None if guess is None else guess[origins].ravel())
         duals = np.empty((k, len(origins), n))
         _cover(pairs, best, duals.reshape(k, -1)[:support])
         level = best.reshape(len(origins), n)
-        for hub in range(support, k):
+        for hub in range(support, exact):
             lift(view, origins, level, duals, hub)
+        if exact < k:
+            duals[exact:] = np.maximum(level - alone(origins), 0.0)
         v[origins] = level
         u[origins[:, None], order] = duals.transpose(1, 0, 2)
 
     over_origins(work, n, max(k, support * support // 4), threads)
     const, slope = weigh(relaxation, v, u)
     return Cuts(const, slope, v, u)
+
+
+def _cheapest_use(view: Relaxation, first: int) -> Callable[[Ints], Floats]:
+    """Return the cheapest path over each hub from position `first` on, as a function of the origins."""
+    k = len(view.hubs)
+    outer = np.arange(first, k)
+    reach = np.array([(view.entry + view.between[:, hub]).min(axis=1) for hub in outer])
+    onward = np.array([(view.between[hub][:, None] + view.exit).min(axis=0) for hub in outer])
+
+    def cheapest(origins: Ints) -> Floats:
+        use = view.entry[origins][:, outer].T[:, :, None] + onward[:, None, :]
+        np.minimum(use, reach[:, origins, None] + view.exit[outer][:, None, :], out=use)
+        use[:, np.arange(len(origins)), origins] = view.local[origins][:, outer].T
+        return np.asarray(use)
+
+    return cheapest
 
 
 def over_origins(work: Callable[[Ints], None], n: int, width: int, threads: int) -> None:
@@ -152,8 +196,8 @@ def _cover_with_slope(pairs: Floats, level: Floats, duals: Floats, slopes: Float
         slopes[hub] = np.where(level > need, slope, 0.0)
 
 
-def _best_level(pairs: Floats, z: Floats) -> Floats:
-    """Return the v (N,) that about maximises ``v - u(v) z`` over the hubs of `pairs`.
+def _best_level(pairs: Floats, z: Floats, guess: Floats | None) -> Floats:
+    """Return the v (N,) that about maximises ``v - u(v) z`` over the hubs of `pairs`, from a `guess`.
 
     Below the cheapest path no hub is charged; above the level where the hubs whose own path is cheaper sum to
     1 in z nothing is gained, so the best lies between.
@@ -168,12 +212,21 @@ def _best_level(pairs: Floats, z: Floats) -> Floats:
     best: Floats = low.copy()
     gain = low.copy()
     duals, slopes = np.empty((s, count)), np.empty((s, count))
-    for _ in range(BISECTIONS):
-        level = 0.5 * (low + high)
+    level, step = 0.5 * (low + high), (high - low) * FIRST_STEP
+    rose = np.full(count, guess is None)
+    fell = rose.copy()
+    if guess is not None:
+        level = np.clip(guess, low, high)
+    for _ in range(BISECTIONS if guess is None else FROM_GUESS):
         _cover_with_slope(pairs, level, duals, slopes)
         value = level - z @ duals
         better = value > gain
         best, gain = np.where(better, level, best), np.where(better, value, gain)
         rising = z @ slopes < 1.0
+        rose |= rising
+        fell |= ~rising
         low, high = np.where(rising, level, low), np.where(rising, high, level)
+        outward = np.where(rising, np.minimum(high, level + step), np.maximum(low, level - step))
+        level = np.where(rose & fell, 0.5 * (low + high), outward)
+        step = 3.0 * step
     return best

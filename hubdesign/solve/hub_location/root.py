@@ -7,8 +7,8 @@ from typing import Protocol
 import numpy as np
 
 from hubdesign.solve.control import Control
-from hubdesign.solve.hub_location.ascent import lift, make_cuts, over_origins
-from hubdesign.solve.hub_location.instance import Floats, Ints
+from hubdesign.solve.hub_location.ascent import Cuts, lift, make_cuts, over_origins
+from hubdesign.solve.hub_location.instance import Bools, Floats, Ints
 from hubdesign.solve.hub_location.master import Bound, Domain, Master, Row, bound_over
 from hubdesign.solve.hub_location.relaxation import Relaxation
 from hubdesign.solve.hub_location.search import improve, round_point
@@ -67,6 +67,7 @@ class Root:
         self.domain = self._domain()
         self.master = Master(self.core.fixed, len(relaxation.volume), self.domain)
         self.finished = False
+        self._level: Floats | None = None
         self.value = relaxation.trivial_bound()
         self.point = np.zeros(len(chosen))
         self.centre = self._first_centre(starts)
@@ -110,11 +111,17 @@ class Root:
             self.control.report(bound=(shown + self.full.constant) / self.full.scale)
 
     def _cut(self, point: Floats) -> int:
-        cuts = make_cuts(self.core, point, self.centre, self.control.threads)
+        cuts = self.cuts_at(point, None)
         z, eta = self.point, np.full(len(cuts.const), -np.inf)
         if self.master.rows:
             eta = self._eta
         return self.master.add(cuts, z, eta, VIOLATION)
+
+    def cuts_at(self, point: Floats, careful: Bools | None) -> Cuts:
+        """Return the cuts at `point`, looking for v near that of the cuts before."""
+        cuts = make_cuts(self.core, point, self.centre, self.control.threads, careful, self._level)
+        self._level = cuts.v
+        return cuts
 
     def _cut_core(self) -> Bound:
         """Cut until the bound over the core stalls or reaches the cutoff; return the last bound."""

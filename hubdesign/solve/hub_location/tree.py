@@ -7,7 +7,6 @@ import heapq
 import numpy as np
 
 from hubdesign.solve.control import Control
-from hubdesign.solve.hub_location.ascent import make_cuts
 from hubdesign.solve.hub_location.instance import Floats
 from hubdesign.solve.hub_location.master import Domain
 from hubdesign.solve.hub_location.root import VIOLATION, Incumbent, Root
@@ -71,7 +70,7 @@ def _cut_node(root: Root, incumbent: Incumbent, domain: Domain, value: float) ->
         if turn and not whole and gained < 0.1 * (limit - value):
             break
         point = np.round(z) if whole else z
-        cuts = make_cuts(root.core, point, root.centre, root.control.threads)
+        cuts = root.cuts_at(point, domain.upper > 0.5)
         if not root.master.add(cuts, z, eta, VIOLATION):
             break
     return value, domain, z
