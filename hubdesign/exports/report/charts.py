@@ -141,7 +141,8 @@ def progress_curves(results: Results, unit: str) -> Curves | None:
     rows = results.progress.records()
     best = [(float(r["seconds"] or 0), float(r["best_plan"])) for r in rows if r["best_plan"] is not None]
     bound = [(float(r["seconds"] or 0), float(r["bound"])) for r in rows if r["bound"] is not None]
-    if not best or not bound or len(set(best + bound)) < 3:
+    values = [value for _, value in best + bound]
+    if not best or not bound or max(values) - min(values) <= 1e-6 * max(map(abs, values)):
         return None
     end = max(float(r["seconds"] or 0) for r in rows)
     low, high = _telling_range([v for _, v in best], [v for _, v in bound])
@@ -151,7 +152,7 @@ def progress_curves(results: Results, unit: str) -> Curves | None:
         Axis(unit, tuple((_up(t, y[0], y[-1]), short_number(t)) for t in y)),
         _steps(best, end, x, y),
         _steps(bound, end, x, y),
-        f"After {say_number(round(end, 1))} s the best plan stands at {say_number(best[-1][1])} and the bound"
+        f"After {end:.1f} s the best plan stands at {say_number(best[-1][1])} and the bound"
         f" at {say_number(bound[-1][1])} {unit}.",
     )
 

@@ -128,8 +128,10 @@ for (const table of all("table.data")) tables[table.id.slice(2)] = new Rows(tabl
 // Figures of one row, for the card beside the map and for what a screen reader says.
 const figures = (rows, row, group) => rows.heads
   .filter(head => !head.group || head.group === group)
-  .map(head => [head.title, row.cells[head.at].textContent, head.unit])
+  .map(head => [head.title, row.cells[head.at].textContent, head.unit, head.key])
   .filter(([, value]) => value !== "");
+// What the title of the card says already, or the map itself.
+const TOLD = new Set(["station", "name", "from", "to", "lat", "lon"]);
 const card = document.querySelector(".card");
 let kept = null;
 const source = element => {
@@ -152,22 +154,29 @@ const fill = (element, keeping) => {
   const title = make("h3");
   title.append(...titleOf(from).map(isolated));
   const list = make("dl");
-  for (const [name, value, unit] of figures(from.rows, from.row, from.group)) {
-    const told = make("dd");
+  for (const [name, value, unit, key] of figures(from.rows, from.row, from.group)) {
+    if (TOLD.has(key)) continue;
+    const term = make("dt", name, {"data-k": key}), told = make("dd");
+    if (unit) term.append(" ", make("span", unit, {class: "u"}));
     told.append(isolated(value));
-    if (unit) told.append(" ", make("span", unit, {class: "u"}));
-    list.append(make("dt", name), told);
+    list.append(term, told);
   }
   card.replaceChildren(title);
   if (from.group) card.append(make("p", from.group, {class: "kept"}));
   card.append(list);
-  if (keeping) card.append(make("p", "Kept. Esc lets go.", {class: "kept"}));
+  card.classList.toggle("held", keeping);
+  if (!keeping) return;
+  const button = make("button", "Let go", {type: "button", class: "drop", title: "Esc"});
+  button.addEventListener("click", release);
+  card.append(button);
 };
 const idle = card && card.firstElementChild.cloneNode(true);
 const release = () => {
   if (kept) kept.classList.remove("hot");
   kept = null;
-  if (card) card.replaceChildren(idle.cloneNode(true));
+  if (!card) return;
+  card.classList.remove("held");
+  card.replaceChildren(idle.cloneNode(true));
 };
 const keep = element => {
   if (kept) kept.classList.remove("hot");
@@ -334,7 +343,7 @@ for (const svg of maps) {
     element.setAttribute("tabindex", "-1");
     element.setAttribute("role", "button");
     element.setAttribute("aria-label", titleOf(from).join("") + ": " + figures(from.rows, from.row, from.group)
-      .slice(from.station ? 2 : 3, 9).map(([name, value, unit]) => `${name} ${value} ${unit}`.trim()).join(", "));
+      .filter(([, , , key]) => !TOLD.has(key)).slice(0, 7).map(([name, value, unit]) => `${name} ${value} ${unit}`.trim()).join(", "));
   }
   svg.addEventListener("pointerover", event => { const hit = event.target.closest(".k, .s"); if (hit && !kept) fill(hit, false); });
   svg.addEventListener("focusin", event => { const hit = event.target.closest(".k, .s"); if (hit) fill(hit, kept === hit); });
@@ -399,6 +408,7 @@ const copyTable = (rows, chosen, caption) => {
   for (const h of rows.heads) {
     const th = make("th", undefined, {scope: "col"});
     th.append(...[...h.cell.querySelectorAll(".g, .t, .u")].flatMap(span => [span.cloneNode(true), " "]));
+    if (rows.text[h.at]) th.style.textAlign = "left";
     head.append(th);
   }
   const thead = make("thead"), tbody = make("tbody");
@@ -451,7 +461,7 @@ const codeOf = text => {
   return row ? rows.cell(row, "station") : text.trim();
 };
 for (const form of all("form.od")) {
-  form.addEventListener("submit", event => { event.preventDefault(); showPair(codeOf(from.value), codeOf(to.value)); });
+  form.addEventListener("submit", event => { event.preventDefault(); showPair(codeOf(from.value), codeOf(to.value)); found.scrollIntoView({block: "nearest"}); });
   form.querySelector(".clear").addEventListener("click", () => { from.value = to.value = ""; clearPair(); });
 }
 for (const rows of [od, tables.unserved]) if (rows && found) rows.table.tBodies[0].addEventListener("click", event => {
@@ -460,7 +470,7 @@ for (const rows of [od, tables.unserved]) if (rows && found) rows.table.tBodies[
   from.value = rows.cell(row, "origin");
   to.value = rows.cell(row, "destination");
   showPair(from.value, to.value);
-  found.scrollIntoView({block: "nearest"});
+  document.getElementById("maps").scrollIntoView();
 });
 document.addEventListener("keydown", event => { if (event.key === "Escape" && !event.target.closest("svg")) { release(); clearPair(); } });
 })();

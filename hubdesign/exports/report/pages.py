@@ -182,12 +182,7 @@ def say_total(column: Column, value: float | int, settings: Settings) -> Figure:
         text = words.say_number(float(value))
     if column.unit in ("links", "hubs", "vehicles", "ratio"):
         unit = ""
-    return Figure(_total_label(column.name), text, unit, column.meaning)
-
-
-def _total_label(name: str) -> str:
-    """Return the name of a total; its unit stands beside it."""
-    return {"stage_length_km": "stage length", "co2_tonnes": "CO2"}.get(name, words.heading(name))
+    return Figure(words.heading(column.name, column.unit), text, unit, column.meaning)
 
 
 def _solve_words(result: Result) -> str:

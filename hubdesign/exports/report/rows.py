@@ -131,7 +131,7 @@ def head_of(column: Column, settings: Settings, group: str = "") -> Head:
     text = column.kind == "text"
     return Head(
         column.name,
-        heading(column.name),
+        heading(column.name, column.unit),
         unit_words(column.unit, settings),
         unit_words(column.meaning, settings) if text else column.meaning,
         text,

@@ -36,6 +36,7 @@ _PARTS = {
 class MatrixRow:
     """A figure of comparison.csv: its cells by structure; `part` begins a part of the table."""
 
+    key: str
     label: str
     unit: str
     meaning: str
@@ -97,7 +98,9 @@ def comparison_page(
         missing=answer.missing_places(comparison.problem),
         cost_rows=_cost_rows(results),
         transfer_bars={name: charts.transfer_bars(part) for name, part in results.items()},
-        curves={name: charts.progress_curves(part, unit) for name, part in results.items()},
+        curves={
+            name: charts.progress_curves(part, unit) for name, part in results.items() if name != "current"
+        },
         shown_tables=tables,
     )
 
@@ -123,6 +126,9 @@ def _panels(comparison: Comparison, results: dict[str, Results]) -> list[Panel]:
         status = entry.status.value if entry.comparable or told is None else "not comparable"
         if entry.structure == "current" and entry.comparable:
             status = "as operated"
+        gap = None if told is None else told.answer["gap"]
+        if status in ("proven", "feasible") and gap is not None:
+            status += f", gap {words.say_share(gap)}"
         page = f"{entry.structure}/report.html" if told is not None else ""
         panels.append(
             Panel(
@@ -154,7 +160,11 @@ def _matrix(table: Table, settings: Settings, maximise: bool) -> list[MatrixRow]
         )
         unit = words.unit_words(column.unit, settings)
         new_part = part if not any(row.part == part for row in rows) else ""
-        rows.append(MatrixRow(words.heading(column.name), unit, column.meaning, cells, new_part))
+        rows.append(
+            MatrixRow(
+                column.name, words.heading(column.name, column.unit), unit, column.meaning, cells, new_part
+            )
+        )
     return rows
 
 

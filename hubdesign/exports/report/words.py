@@ -94,6 +94,13 @@ def goal_unit(settings: Settings) -> str:
     return settings.volume_unit if settings.goal == "most-volume" else settings.currency
 
 
-def heading(name: str) -> str:
-    """Return a column's name as a heading: ``volume_out`` is "volume out"."""
+def heading(name: str, unit: str = "") -> str:
+    """Return a column's name as a heading: ``volume_out`` is "volume out".
+
+    A unit that stands beside it is not said twice: ``distance_km``, in km, is "distance".
+    """
+    if unit == "km":
+        name = name.removesuffix("_km")
+    if name in ("co2_kg", "co2_tonnes"):
+        name = "co2"
     return name.replace("_", " ").replace("co2", "CO2")

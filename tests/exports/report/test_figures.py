@@ -170,7 +170,7 @@ def test_every_figure_side_by_side_is_that_of_comparison_csv(compared: Path) -> 
     for row in matrix.find("tr"):
         if "data-k" not in row.attributes:
             continue
-        key = row.attributes["data-k"].replace("CO2", "co2").replace(" ", "_")
+        key = row.attributes["data-k"]
         seen.add(key)
         cells = [cell.text for cell in row.find("td")][:-1]
         assert len(cells) == len(rows)
