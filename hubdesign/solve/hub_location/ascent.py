@@ -11,7 +11,8 @@ By weak duality every feasible (v, u) gives ``cost(z) >= v - u z`` for all z: a 
 
 For a given v the hubs are taken by decreasing z, and each covers what the earlier ones leave of its pairs:
 ``u_k = max(0, v - F_kk, max over earlier m of v - F_km - u_m)``. That is feasible by construction, exact at
-integer z, and cheap for the open hubs. The best v is found by bisection on the slope of ``v - u(v) z``.
+integer z, and cheap for the open hubs. The best v is sought by the sign of the slope of
+``v - u(v) z``, from the v of the cuts before outward and then by bisection; any v gives a valid cut.
 """
 
 from __future__ import annotations

@@ -11,7 +11,7 @@ import pytest
 from hubdesign.solve.control import Control
 from hubdesign.solve.hub_location.ascent import make_cuts
 from hubdesign.solve.hub_location.evaluate import multiple_stops, multiple_unit_costs, total_cost
-from hubdesign.solve.hub_location.instance import HubStatus
+from hubdesign.solve.hub_location.instance import HubStatus, plain_instance
 from hubdesign.solve.hub_location.master import Domain, bound_over
 from hubdesign.solve.hub_location.multiple import solve_multiple
 from hubdesign.solve.hub_location.relaxation import build_relaxation
@@ -123,6 +123,27 @@ def test_a_loose_gap_gives_a_bound_that_holds() -> None:
             continue
         assert answer.bound <= best + 1e-9 * abs(best) <= answer.objective + 2e-9 * abs(best)
         assert answer.objective - answer.bound <= 0.0501 * abs(answer.objective)
+
+
+def test_a_solve_without_time_gives_a_bound_that_holds() -> None:
+    for seed in range(40):
+        instance = oracle.random_instance(seed, 6)
+        best = oracle.best_multiple(instance)
+        answer = solve_multiple(instance, Control(time_limit_s=0.0, gap=0.0))
+        assert answer.bound <= best + 1e-9 * abs(best)
+        assert answer.objective >= best - 1e-9 * abs(best)
+
+
+def test_threads_change_nothing() -> None:
+    rng = np.random.default_rng(1)
+    xy = rng.uniform(0.0, 60.0, (120, 2))
+    distance = np.hypot(*(xy[:, None] - xy[None]).transpose(2, 0, 1))
+    instance = plain_instance(rng.random((120, 120)), 3 * distance, distance, 2 * distance, hubs=2)
+    relaxation = build_relaxation(instance, closure=True).restrict(np.arange(40))
+    point = rng.random(40) ** 4
+    one, two = (make_cuts(relaxation, point, point, threads) for threads in (1, 2))
+    assert (one.slope == two.slope).all()
+    assert (one.const == two.const).all()
 
 
 def test_collection_capacities_are_refused() -> None:

@@ -125,3 +125,12 @@ def test_the_enumerated_optimum_is_found_and_proven(rough: bool, capacity: bool)
         assert answer.allocation is not None
         plan = tuple(int(a) for a in answer.allocation)
         assert oracle.single_cost(instance, answer.hubs, plan) == pytest.approx(answer.objective)
+
+
+def test_a_solve_without_time_gives_a_bound_that_holds() -> None:
+    for seed in range(40):
+        instance = oracle.random_instance(seed, 5, capacity=seed % 2 == 1)
+        best = oracle.best_single(instance)
+        answer = solve_single(instance, Control(time_limit_s=0.0, gap=0.0))
+        assert answer.bound <= best + 1e-9 * abs(best)
+        assert answer.objective >= best - 1e-9 * abs(best)
