@@ -30,13 +30,16 @@ from hubdesign.solve.hub_location.instance import Floats, Ints
 
 @dataclass(frozen=True, slots=True)
 class Row:
-    """A cut of one origin: cost of its volume ``>= const - slope @ z``, with the duals behind it."""
+    """A cut of one origin: cost of its volume ``>= const - slope @ z``.
+
+    `v` (n,) and `u` (K, n) are the duals behind it, kept (u not None) while hubs may still join.
+    """
 
     origin: int
     const: float
     slope: Floats
     v: Floats
-    u: Floats
+    u: Floats | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -149,11 +152,12 @@ class Master:
         self.rows.append(row)
         self._idle.append(0)
 
-    def add(self, cuts: Cuts, z: Floats, eta: Floats, tolerance: float) -> int:
+    def add(self, cuts: Cuts, z: Floats, eta: Floats, tolerance: float, *, keep_duals: bool) -> int:
         """Add the cuts that `z` (K,) with the origins' costs `eta` violates; return how many."""
         short = cuts.const - cuts.slope @ z - eta > tolerance
         for i in np.flatnonzero(short):
-            row = Row(int(i), float(cuts.const[i]), cuts.slope[i], cuts.v[i], cuts.u[i].copy())
+            duals = cuts.u[i].copy() if keep_duals else None
+            row = Row(int(i), float(cuts.const[i]), cuts.slope[i], cuts.v[i], duals)
             self._append(row)
         return int(short.sum())
 

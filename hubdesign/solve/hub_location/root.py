@@ -115,7 +115,7 @@ class Root:
         z, eta = self.point, np.full(len(cuts.const), -np.inf)
         if self.master.rows:
             eta = self._eta
-        return self.master.add(cuts, z, eta, VIOLATION)
+        return self.master.add(cuts, z, eta, VIOLATION, keep_duals=len(self.outside) > 0)
 
     def cuts_at(self, point: Floats, careful: Bools | None) -> Cuts:
         """Return the cuts at `point`, looking for v near that of the cuts before."""
@@ -178,7 +178,8 @@ class Root:
 
     def _keep(self, keep: Ints) -> None:
         rows = [
-            Row(row.origin, row.const, row.slope[keep], row.v, row.u[keep]) for row in self.master.active_rows
+            Row(row.origin, row.const, row.slope[keep], row.v, None if row.u is None else row.u[keep])
+            for row in self.master.active_rows
         ]
         self.position = self.position[keep]
         self.core = self.core.restrict(keep)
@@ -240,7 +241,7 @@ def average_rows(master: Master, origins: int, hubs: int) -> tuple[Floats, Float
     v = np.zeros((origins, origins))
     u = np.zeros((origins, hubs, origins))
     for row, weight in zip(master.rows, master.multipliers()):
-        if weight > 0.0:
+        if weight > 0.0 and row.u is not None:
             v[row.origin] += weight * row.v
             u[row.origin] += weight * row.u
     return v, u
@@ -271,6 +272,7 @@ def outside_charges(
 
 def extend_row(view: Relaxation, row: Row, old: int) -> Row:
     """Return `row` with duals for the hubs of `view` from position `old` on."""
+    assert row.u is not None
     k, n = len(view.hubs), view.volume.shape[0]
     duals = np.empty((k, 1, n))
     duals[:old, 0] = row.u

@@ -71,6 +71,6 @@ def _cut_node(root: Root, incumbent: Incumbent, domain: Domain, value: float) ->
             break
         point = np.round(z) if whole else z
         cuts = root.cuts_at(point, domain.upper > 0.5)
-        if not root.master.add(cuts, z, eta, VIOLATION):
+        if not root.master.add(cuts, z, eta, VIOLATION, keep_duals=False):
             break
     return value, domain, z
