@@ -26,6 +26,7 @@ def solve(
     """
     from hubdesign.solve import carrier
     from hubdesign.solve.direct import solve_direct
+    from hubdesign.solve.fixed_charge import adapter as fixed_charge
     from hubdesign.solve.hub_location.adapter import fits, solve_hub_location
 
     network = build_network(problem) if network is None else network
@@ -34,4 +35,6 @@ def solve(
         return solve_hub_location(network, control, starts)
     if carrier.fits(problem):
         return carrier.solve(problem, network, control, starts)
+    if fixed_charge.fits(network):
+        return fixed_charge.solve_fixed_charge_design(network, control, starts)
     return solve_direct(network, control, starts)

@@ -102,6 +102,54 @@ def make_ap_kind(out: Path, n: int, seed: int, hubs: int | str, allocation: str 
     return _write_hub_case(out, lengths, volumes, cost, None, p, (3.0, 0.75, 2.0), allocation)
 
 
+def convert_canad(source: Path, out: Path) -> Path:
+    """Write a canad file (.dow) as an input folder and return it.
+
+    Crainic, Frangioni and Gendron 2001 (Discrete Applied Mathematics 112:73-99): a title; nodes, arcs,
+    commodities; an arc a line (from, to, unit cost, capacity, fixed cost, two unused figures); a commodity a
+    line (origin, destination, demand). Arcs are one-way (a repeated pair becomes a mode of its own), volume
+    may pass through every node; commodities of one pair are added up, since they may be split anyway.
+    """
+    words = source.read_text().split("\n", 1)[1].split()
+    nodes, arcs, commodities = (int(word) for word in words[:3])
+    arc = [words[3 + 7 * i :][:7] for i in range(arcs)]
+    rest = words[3 + 7 * arcs :]
+    demand = [rest[3 * i :][:3] for i in range(commodities)]
+    volumes: dict[tuple[str, str], float] = {}
+    for origin, destination, volume in demand:
+        volumes[origin, destination] = volumes.get((origin, destination), 0.0) + float(volume)
+    ways: dict[tuple[str, str], int] = {}
+    mode = []
+    for row in arc:
+        ways[row[0], row[1]] = ways.get((row[0], row[1]), 0) + 1
+        mode.append(f"way{ways[row[0], row[1]]}")
+    out.mkdir(parents=True, exist_ok=True)
+    _write(out / "stations.csv", ["station", "may_be_hub"], ([f"N{i + 1}", "yes"] for i in range(nodes)))
+    _write(
+        out / "links.csv",
+        ["from", "to", "mode", "direction", "distance_km", "unit_cost", "capacity", "fixed_cost"],
+        ([f"N{a[0]}", f"N{a[1]}", way, "one-way", 1, a[2], a[3], a[4]] for a, way in zip(arc, mode)),
+    )
+    _write(
+        out / "demand.csv",
+        ["origin", "destination", "volume"],
+        ([f"N{o}", f"N{d}", volume] for (o, d), volume in volumes.items()),
+    )
+    settings = [
+        "[network]",
+        'structure = "mixed"',
+        'max_transfers = "unlimited"',
+        'links = "listed"',
+        "[goal]",
+        'goal = "least-cost"',
+        "[solve]",
+        "gap = 0.0",
+        "threads = 1",
+    ]
+    (out / "settings.toml").write_text("\n".join(settings) + "\n")
+    return out
+
+
 def _write_hub_case(
     out: Path,
     lengths: Matrix,

@@ -47,10 +47,10 @@ def solve_fixed_charge(
     form = Formulation(instance)
     flows = FlowSolver(form, control.seed)
     incumbent = Incumbent(form, control)
-    if (form.forced & ~form.reachable).any() or not _can_carry(form, flows, incumbent, control):
-        if not control.stop_requested():
-            return _answer(form, incumbent, np.inf, FixedChargeStatus.INFEASIBLE)
-        return _answer(form, incumbent, -np.inf, FixedChargeStatus.UNKNOWN)
+    everything = np.ones(instance.links, dtype=bool)
+    if (form.forced & ~form.reachable).any() or flows.cannot_carry(everything, control):
+        return _answer(form, incumbent, np.inf, FixedChargeStatus.INFEASIBLE)
+    _open_all(form, flows, incumbent, control)
     for links in starts:
         incumbent.offer(flows.plan(links, control, incumbent.scaled))
     lp = PathRelaxation(form, control.seed)
@@ -63,21 +63,14 @@ def solve_fixed_charge(
     return _answer(form, incumbent, bound, None)
 
 
-def _can_carry(form: Formulation, flows: FlowSolver, incumbent: Incumbent, control: Control) -> bool:
-    """Whether all links together carry what must be carried; the plan is offered.
-
-    The price of not carrying is raised until it is not worth it or clearly cannot be avoided.
-    """
+def _open_all(form: Formulation, flows: FlowSolver, incumbent: Incumbent, control: Control) -> None:
+    """Offer the plan with every link open; the price of not carrying is raised until that is not worth it."""
     everything = np.ones(form.instance.links, dtype=bool)
     for _ in range(4):
-        plan = flows.plan(everything, control)
-        if plan is not None:
-            return incumbent.offer(plan) or True
-        if control.stop_requested():
-            return False
-        form.unserved = np.where(form.forced, form.unserved * 30.0, form.unserved)
+        if incumbent.offer(flows.plan(everything, control)) or control.stop_requested():
+            return
+        form.raise_price()
         flows.reset()
-    return False
 
 
 def _search(lp: PathRelaxation, flows: FlowSolver, incumbent: Incumbent, control: Control) -> float:

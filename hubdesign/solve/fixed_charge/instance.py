@@ -39,6 +39,8 @@ class FixedChargeInstance:
         Per commodity, shape (K,); volume > 0, origin and destination differ.
     unserved_cost
         Per commodity, shape (K,): money per unit not carried; inf where all must be.
+    carried_cost
+        Per commodity, shape (K,): money per unit carried, whatever its path, >= 0.
     """
 
     nodes: int
@@ -55,6 +57,7 @@ class FixedChargeInstance:
     destination: Ints
     volume: Floats
     unserved_cost: Floats
+    carried_cost: Floats
 
     @property
     def links(self) -> int:
@@ -86,10 +89,11 @@ class FixedChargeInstance:
     def leg_costs(self) -> Floats:
         """Return the cost of carrying all of a commodity over an arc, money, shape (K, A).
 
-        The transfer cost of an arc's tail is in it unless the tail is the origin.
+        The transfer cost of an arc's tail is in it; for the origin, what carrying costs on any path.
         """
         passes = self.tail[None, :] != self.origin[:, None]
-        unit = self.unit_cost[None, :] + passes * self.transfer_cost[self.tail][None, :]
+        at_tail = np.where(passes, self.transfer_cost[self.tail][None, :], self.carried_cost[:, None])
+        unit = self.unit_cost[None, :] + at_tail
         result: Floats = self.volume[:, None] * unit
         return result
 

@@ -33,11 +33,28 @@ class FlowSolver:
 
     def __init__(self, form: Formulation, seed: int) -> None:
         self.form, self.seed = form, seed
+        self.carrier: PathRelaxation | None = None
         self.lp = PathRelaxation(form, seed)
 
     def reset(self) -> None:
         """Start afresh with the prices of `form` as they are now."""
         self.lp = PathRelaxation(self.form, self.seed)
+
+    def cannot_carry(self, links: Bools, control: Control) -> bool:
+        """Whether `links` are proven too few to carry what must be carried."""
+        if self.carrier is None:
+            self.carrier = PathRelaxation(self.form.carrying(), self.seed)
+        lp, chosen = self.carrier, (links | self.form.instance.must_open).astype(np.float64)
+        lp.set_links(chosen, chosen)
+        for _ in range(500):
+            if control.stop_requested() or not lp.run():
+                return False
+            bound, found = lp.price()
+            if bound > MISSING:
+                return True
+            if not lp.add_paths(found):
+                return False
+        return False
 
     def plan(self, links: Bools, control: Control, cutoff: float = np.inf) -> Plan | None:
         """Return the cheapest plan that opens no link but `links`; None without one below `cutoff`."""

@@ -20,6 +20,7 @@ Costs of the relaxation are scaled; the algorithm is the column and row generati
 
 from __future__ import annotations
 
+import copy
 from typing import Any
 
 import numpy as np
@@ -68,6 +69,21 @@ class Formulation:
         self.unserved = np.where(self.forced, dear, given)
         self.per_row = np.maximum(1.0, self.load)  # 1 / min(1, capacity / volume)
 
+    def carrying(self) -> Formulation:
+        """Return the formulation that only asks what part of the forced commodities cannot be carried.
+
+        Nothing costs but that part, 1 for a whole commodity, so a positive bound proves that not all can be.
+        """
+        result = copy.copy(self)
+        result.cost = np.where(self.usable, 0.0, np.inf)
+        result.fixed = np.zeros_like(self.fixed)
+        result.unserved = self.forced.astype(np.float64)
+        return result
+
+    def raise_price(self) -> None:
+        """Make it dearer to leave forced commodities; relaxations made before keep the old price."""
+        self.unserved = np.where(self.forced, 30.0 * self.unserved, self.unserved)
+
 
 class PathRelaxation:
     """The LP; `paths` and rows only ever grow."""
@@ -91,7 +107,7 @@ class PathRelaxation:
         self._of: list[list[int]] = [[] for _ in range(self.commodities)]
         self._entry_path: list[int] = []
         self._entry_arc: list[int] = []
-        self.penalty = 1.0
+        self.unserved = form.unserved.copy()
         self.capacity_row = np.full(self.arcs, 1.0)  # divisor of capacity under capacity scaling
         self._build()
         self.y = np.zeros(self.links)
@@ -123,7 +139,7 @@ class PathRelaxation:
         )
         k = np.arange(self.commodities, dtype=np.int32)
         ones = np.ones(self.commodities)
-        add_cols(self.commodities, self.form.unserved, 0.0 * ones, ones, self.commodities, k, k, ones)
+        add_cols(self.commodities, self.unserved, 0.0 * ones, ones, self.commodities, k, k, ones)
 
     # ---- growing
 
@@ -261,7 +277,7 @@ class PathRelaxation:
         shortest = dist[np.arange(self.commodities), inst.destination]
         self.link_reduced = form.fixed - gain
         at_best = np.where(self.link_reduced > 0.0, self.lower, self.upper)
-        carried = np.minimum(np.maximum(shortest - inst.nodes * STEP, 0.0), form.unserved * self.penalty)
+        carried = np.minimum(np.maximum(shortest - inst.nodes * STEP, 0.0), self.unserved)
         bound = float(carried.sum() + (self.link_reduced * at_best).sum())
         better = np.flatnonzero(shortest < self.pi - 1e-7 * (1.0 + np.abs(self.pi)))
         traced = form.finder.trace(cost, dist, better)

@@ -171,8 +171,7 @@ class LinkTree:
 
     def _shut(self, lower: Bytes, bound: float) -> float:
         """Return the bound of a node with every link decided: inf where these links cannot carry all."""
-        plan = self.flows.plan(lower > 0, self.control)
-        return np.inf if plan is None and not self.control.stop_requested() else bound
+        return np.inf if self.flows.cannot_carry(lower > 0, self.control) else bound
 
     def _fix(self, node: _Node, bound: float) -> tuple[Bytes, Bytes]:
         lp, cutoff = self.lp, self._cutoff
