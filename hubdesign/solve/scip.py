@@ -138,7 +138,7 @@ class ScipModel:
             scip.setObjlimit(objective_limit)
         watcher = _watcher(self, control, on_plan, on_bound)
         scip.includeEventhdlr(watcher, "progress", "reports plans and bounds, obeys the limit")
-        with control.interrupting(scip.interruptSolve):
+        with control.interrupting(self.interrupt):
             scip.optimizeNogil()
         if watcher.error is not None:
             raise watcher.error
@@ -155,6 +155,15 @@ class ScipModel:
             "misc/usesymmetry": 0,
             "timing/clocktype": 2,
         }
+
+    def interrupt(self) -> None:
+        """Have SCIP stop; may be called from any thread and at any time.
+
+        SCIP refuses while it sets up the solve: the watcher then stops it at its next event.
+        """
+        stages = self._pyscipopt.SCIP_STAGE
+        if self.scip.getStage() not in (stages.INITSOLVE, stages.EXITSOLVE, stages.FREETRANS, stages.FREE):
+            self.scip.interruptSolve()
 
     def point(self, solution: Any) -> Floats:
         """Return the values of a SCIP solution in the order of the program's columns."""
@@ -204,13 +213,13 @@ def _watcher(
         def eventexec(self, event: Any) -> None:
             try:
                 if control.stop_requested():
-                    self.model.interruptSolve()
+                    model.interrupt()
                 if event.getType() == events.BESTSOLFOUND and on_plan is not None:
                     on_plan(model.point(self.model.getBestSol()))
                 elif on_bound is not None and abs(bound := self.model.getDualbound()) < SCIP_INFINITY:
                     on_bound(bound)
             except BaseException as error:
                 self.error = error
-                self.model.interruptSolve()
+                model.interrupt()
 
     return Watcher()

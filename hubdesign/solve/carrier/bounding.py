@@ -7,9 +7,10 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy import sparse
 
-from hubdesign.solve.carrier.linear import LinearModel
-from hubdesign.solve.carrier.setting import Setting
+from hubdesign.solve.carrier.linear import LinearModel, rows_among
+from hubdesign.solve.carrier.setting import ALL_COLUMNS, RowSet, Setting
 from hubdesign.solve.relaxation import LpStatus
 
 Floats = NDArray[np.float64]
@@ -46,20 +47,20 @@ class Bounder:
 
     def __init__(self, setting: Setting, lp: LinearModel) -> None:
         self.setting, self.lp = setting, lp
-        self.lower, self.upper = setting.lower.copy(), setting.upper.copy()
-        self._changed: Ints = np.zeros(0, dtype=np.int64)
+        self.lower, self.upper = lp.lower.copy(), lp.upper.copy()
+        self.open_upper = setting.follow(self.upper)
+        self._fixings: dict[int, tuple[float, float]] = {}
 
     def fix(self, fixings: dict[int, tuple[float, float]]) -> None:
         """Put the bounds of a node in place of those of the last one."""
-        setting = self.setting
         columns = np.array(sorted(fixings), dtype=np.int64)
-        self.lower, self.upper = setting.lower.copy(), setting.upper.copy()
+        self.lower, self.upper = self.lp.lower.copy(), self.lp.upper.copy()
         for column in columns.tolist():
             self.lower[column], self.upper[column] = fixings[column]
-        touched = np.union1d(columns, self._changed)
+        touched = np.array(sorted({*fixings, *self._fixings}), dtype=np.int64)
         self.lp.set_bounds(touched, self.lower[touched], self.upper[touched])
-        self._changed = columns
-        self.bounds_follow = setting.follow(self.upper)
+        self._fixings = dict(fixings)
+        self.open_upper = self.setting.follow(self.upper)
 
     def rounds(
         self,
@@ -68,15 +69,16 @@ class Bounder:
         least_gain: float,
         enough: Callable[[], float] = lambda: np.inf,
         on_round: Callable[[float], None] | None = None,
-        idle: int = 6,
+        idle: int = 2,
+        patience: int = 1,
     ) -> NodeEnd:
-        """Separate and price until the gain of two rounds is below `least_gain` (relative) or it is `enough`.
+        """Separate and price until it is `enough` or `patience` rounds gain less than `least_gain` each.
 
         `on_round` hears of every proven bound.
         """
         setting, lp = self.setting, self.lp
         best, last, weak = -np.inf, -np.inf, 0
-        interior: bool | None = None
+        interior: bool | None = True if lp.row_count > _INTERIOR_SIZE else None
         for count in range(most + _PRICING_ROUNDS):
             status = lp.solve(setting.control.remaining_s(), interior=interior)
             if status is LpStatus.INFEASIBLE:
@@ -84,13 +86,13 @@ class Bounder:
             if status is not LpStatus.OPTIMAL:
                 return NodeEnd(status, best)
             value = lp.objective
-            bound, reduced = lp.dual_bound(self.lower, self.bounds_follow, setting.groups)
+            bound, reduced = lp.dual_bound(self.lower, self.open_upper, setting.groups)
             best = max(best, bound)
             if on_round is not None:
                 on_round(best)
             weak = weak + 1 if value - last < least_gain * abs(value) else 0
             last = value
-            done = count >= most or weak >= 2 or best >= enough() or setting.control.stop_requested()
+            done = count >= most or weak >= patience or best >= enough() or setting.control.stop_requested()
             new = self._missing(reduced) if done or count >= 2 else self._missing(reduced)[:0]
             added = 0 if done else self._separate()
             lp.add_columns(new)
@@ -104,7 +106,7 @@ class Bounder:
     def _infeasible(self, best: float) -> NodeEnd:
         """Return the end of a node without a solution; columns left out could still save it."""
         lp = self.lp
-        missing = np.flatnonzero((self.bounds_follow > 0.0) & (lp.place < 0))
+        missing = np.flatnonzero((self.open_upper > 0.0) & (lp.place < 0))
         if not len(missing):
             return NodeEnd(LpStatus.INFEASIBLE, np.inf)
         lp.add_columns(missing)
@@ -112,7 +114,7 @@ class Bounder:
         if status is LpStatus.INFEASIBLE:
             return NodeEnd(status, np.inf)
         if status is LpStatus.OPTIMAL:
-            best = max(best, lp.dual_bound(self.lower, self.bounds_follow, self.setting.groups)[0])
+            best = max(best, lp.dual_bound(self.lower, self.open_upper, self.setting.groups)[0])
         return NodeEnd(status, best)
 
     def _separate(self) -> int:
@@ -127,7 +129,7 @@ class Bounder:
     def _missing(self, reduced: Floats) -> Ints:
         """Return columns outside the LP that price in, the best of each demand."""
         lp, setting = self.lp, self.setting
-        found = np.flatnonzero((lp.place < 0) & (self.bounds_follow > 0.0) & (reduced < -_PRICE_FLOOR))
+        found = np.flatnonzero((lp.place < 0) & (self.open_upper > 0.0) & (reduced < -_PRICE_FLOOR))
         if not len(found):
             return found
         demand = setting.groups[found]
@@ -136,3 +138,30 @@ class Bounder:
         starts = np.flatnonzero(np.concatenate(([True], demand[1:] != demand[:-1])))
         rank = np.arange(len(found)) - np.repeat(starts, np.diff(np.append(starts, len(found))))
         return np.asarray(found[rank < _COLUMNS_EACH], dtype=np.int64)
+
+
+def sub_lp(setting: Setting, rows: RowSet, lower: Floats, upper: Floats) -> LinearModel:
+    """Return an LP of the problem within tighter bounds: columns and rows that these shut are left out.
+
+    `rows` are valid rows to start from (pool rows and cuts).
+    """
+    upper = setting.follow(upper)
+    active = upper > 0.0
+    active[setting.integer] = True
+    flows = setting.model.flows
+    if int(active[setting.of.flow].sum()) > ALL_COLUMNS:
+        late = flows.itineraries.transfers[flows.of_itinerary] >= 2
+        active[setting.of.flow[late]] = False
+    lp = LinearModel(
+        setting.program,
+        setting.objective.coefficients,
+        active,
+        lower,
+        upper,
+        setting.held,
+        seed=setting.control.seed,
+    )
+    matrix, low, high = rows
+    alive = rows_among(matrix, upper > 0.0, 2)
+    lp.add_row_set(sparse.csr_array(matrix[alive]), low[alive], high[alive])
+    return lp

@@ -116,7 +116,8 @@ class CutMaker:
 
     def flows(self, values: Floats) -> Floats:
         """Return the share f of each pair."""
-        return np.bincount(self.pair_of_entry, weights=values[self.column_of_entry], minlength=len(self.leg))
+        share = np.bincount(self.pair_of_entry, weights=values[self.column_of_entry], minlength=len(self.leg))
+        return share.astype(np.float64)
 
     # -- links -----------------------------------------------------------------------------------------
 
@@ -239,7 +240,7 @@ class CutMaker:
     ) -> list[tuple[int, Ints, Ints, float]]:
         """Alternate between the best demands for the legs and the best legs for the demands.
 
-        A row is a start and a size; returned are (size, legs, demands, violation) of the different cuts found.
+        A row is a start and a size; returned are (size, legs, demands, violation) of the cuts found.
         """
         inside = np.repeat(np.array(starts), len(self.sizes), axis=0)  # (rows, legs)
         size_of = np.tile(np.arange(len(self.sizes)), len(starts))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import threading
+from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,10 +11,10 @@ from numpy.typing import NDArray
 from hubdesign.design import Design, Status
 from hubdesign.model.build import build_model
 from hubdesign.model.layout import Model
-from hubdesign.model.objective import Phase, build_objective, goal_phases
+from hubdesign.model.objective import build_objective, goal_phases
 from hubdesign.network import Network
 from hubdesign.solve.carrier.bounding import Bounder
-from hubdesign.solve.carrier.planning import PlanSide
+from hubdesign.solve.carrier.planning import PlanSide, round_up
 from hubdesign.solve.carrier.setting import RowSet, Setting
 from hubdesign.solve.carrier.tree import Tree
 from hubdesign.solve.control import Control
@@ -28,7 +29,7 @@ _FIRST_PHASE = 0.7
 
 #: One thread: plan steps before the tree, and nodes of the tree for each further step.
 _FIRST_STEPS = 3
-_NODES_PER_STEP = 8
+_NODES_PER_STEP = 4
 
 
 def solve_carrier(network: Network, control: Control, starts: tuple[Design, ...] = ()) -> Design:
@@ -65,7 +66,7 @@ class PhaseRun:
     def __init__(
         self,
         model: Model,
-        phase: Phase,
+        phase: Literal["cost", "profit", "volume"],
         control: Control,
         record: Control,
         held: tuple[RowSet, ...],
@@ -103,8 +104,6 @@ class PhaseRun:
         finally:
             setting.done.set()
             if helper is not None:
-                for interrupt in list(setting.interrupts):
-                    interrupt()
                 helper.join()
             if self._failure is not None:
                 raise self._failure
@@ -131,15 +130,17 @@ class PhaseRun:
         def on_round(bound: float) -> None:
             setting.improve_bound(bound)
             self._rounds += 1
-            if self._rounds >= 2 and self.plans.wants_lp() and self.control.threads > 1:
-                self.plans.hand_lp(lp.copy(), lp.values.copy())
+            if setting.plan is None and self._rounds <= 2:
+                setting.offer(round_up(setting, lp.values))
+            if self._rounds >= 3 and self.plans.wants_rows and self.control.threads > 1:
+                self.plans.hand_rows(lp.tight(), lp.values.copy())
 
-        end = bounder.rounds(30, least_gain=2e-4, enough=lambda: setting.target, on_round=on_round, idle=2)
+        end = bounder.rounds(30, least_gain=1e-3, enough=lambda: setting.target, on_round=on_round, idle=1)
         if end.status is LpStatus.INFEASIBLE:
             return True
         if end.status is not LpStatus.OPTIMAL:
             return False
-        self.plans.hand_lp(lp.copy(), lp.values.copy())
+        self.plans.hand_rows(lp.tight(), lp.values.copy())
         alone = self.control.threads == 1
         if alone:
             for _ in range(_FIRST_STEPS):
@@ -150,10 +151,10 @@ class PhaseRun:
         finished = self.tree.run()
         return finished and setting.plan is None
 
-    def _between(self) -> None:
-        """One thread: a piece of plan work every few nodes."""
+    def _between(self, leaf: bool) -> None:
+        """One thread: a piece of plan work after each leaf and after every few other nodes."""
         self._nodes += 1
-        if self._nodes % _NODES_PER_STEP == 0:
+        if leaf or self._nodes % _NODES_PER_STEP == 0:
             self.plans.step()
 
     def _method(self) -> str:
@@ -161,5 +162,5 @@ class PhaseRun:
         network = model.network
         return (
             f"carrier network, {network.station_count} stations, {network.link_count} candidate links,"
-            f" {len(model.flows)} itineraries: strong relaxation with rounding cuts, hub tree, restricted search"
+            f" {len(model.flows)} itineraries: rounding cuts, tree over hubs, restricted searches"
         )

@@ -79,9 +79,13 @@ class LinearModel:
         self.lower, self.upper = lower, upper
         count = program.column_count
         blocks = [(program.rows.matrix(count), program.rows.lower, program.rows.upper), *extra]
-        self.base = sparse.csr_array(sparse.vstack([block[0] for block in blocks], format="csr"))
-        self.base_lower = np.concatenate([block[1] for block in blocks])
-        self.base_upper = np.concatenate([block[2] for block in blocks])
+        base = sparse.csr_array(sparse.vstack([block[0] for block in blocks], format="csr"))
+        low = np.concatenate([block[1] for block in blocks])
+        high = np.concatenate([block[2] for block in blocks])
+        # A row whose columns all stand at 0, and that 0 satisfies, says nothing.
+        alive = _entries(base) @ ((lower != 0.0) | (upper != 0.0)).astype(np.float64) > 0.0
+        kept = np.flatnonzero(alive | (low > 0.0) | (high < 0.0))
+        self.base, self.base_lower, self.base_upper = sparse.csr_array(base[kept]), low[kept], high[kept]
         self.pool = program.pool.matrix(count)
         self.pool_lower, self.pool_upper = program.pool.lower, program.pool.upper
         self.pool_in = np.zeros(program.pool.count, dtype=bool)
@@ -205,6 +209,11 @@ class LinearModel:
         self.place[new] = len(self.columns) + np.arange(len(new))
         self.columns = np.concatenate((self.columns, new))
 
+    def add_row_set(self, matrix: sparse.csr_array, lower: Floats, upper: Floats) -> None:
+        """Put valid rows over all columns into the LP."""
+        if len(lower):
+            self._add(matrix, lower, upper, np.full(len(lower), -1, dtype=np.int64))
+
     def drop_idle_rows(self, rounds: int = _SLACK_ROUNDS) -> int:
         """Take out pool rows and cuts that were slack in the last `rounds` solves; return how many."""
         leaving = np.flatnonzero(self._idle >= rounds)
@@ -322,3 +331,13 @@ class LinearModel:
         if self.solved:
             twin.highs.setBasis(self.highs.getBasis())
         return twin
+
+
+def _entries(matrix: sparse.csr_array) -> sparse.csr_array:
+    """Return a matrix of ones where `matrix` has an entry."""
+    return sparse.csr_array((np.ones(matrix.nnz), matrix.indices, matrix.indptr), shape=matrix.shape)
+
+
+def rows_among(matrix: sparse.csr_array, columns: Bools, least: int) -> Ints:
+    """Return the rows with at least `least` entries in `columns` (a mask)."""
+    return np.flatnonzero(_entries(matrix) @ columns.astype(np.float64) > least - 0.5)

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import threading
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.solve.carrier.bounding import Bounder
+from hubdesign.solve.carrier.bounding import Bounder, sub_lp
 from hubdesign.solve.carrier.linear import LinearModel
 from hubdesign.solve.carrier.restricted import Restricted
-from hubdesign.solve.carrier.setting import Setting
+from hubdesign.solve.carrier.setting import RowSet, Setting, StepControl
 from hubdesign.solve.relaxation import LpStatus
 
 Floats = NDArray[np.float64]
@@ -25,7 +26,13 @@ _STEP_SHARE = 0.2
 #: Fractions from here on are rounded up in a dive.
 _ROUND_UP = 0.5
 
-_DIVE_STEPS = 60
+_DIVE_STEPS = 300
+
+#: Relaxations and dives between two restricted searches, where all are wanted.
+_STEPS_BETWEEN = 5
+
+#: LPs of hub sets kept at the most.
+_MOST_LPS = 6
 
 #: Restricted searches by how often the last ones failed: width of departures, reopening of links, SCIP
 #: nodes, hubs free.
@@ -47,62 +54,108 @@ def likely_hubs(setting: Setting, values: Floats, threshold: float = 0.5) -> Boo
     return result
 
 
-def dive(setting: Setting, lp: LinearModel, hubs: Bools, *, cut_rounds: int = 2) -> Floats | None:
-    """Return the values of an LP with hubs as given and departures whole, None where the dive fails.
+def dive(setting: Setting, lp: LinearModel) -> Floats | None:
+    """Return the values of `lp`, whose hubs are fixed, with departures whole; None where the dive fails.
 
     Departures nearest to a whole number are fixed first; where that leaves no solution, those just fixed
     are raised instead, which only offers more room.
     """
-    lp.set_bounds(setting.integer, setting.lower[setting.integer], setting.upper[setting.integer])
     bounder = Bounder(setting, lp)
     bounds: dict[int, tuple[float, float]] = {}
-    for i in np.flatnonzero(setting.upper[setting.of.hub] > 0.0).tolist():
-        bounds[int(setting.of.hub[i])] = (float(hubs[i]), float(hubs[i]))
     bounder.fix(bounds)
-    end = bounder.rounds(cut_rounds, least_gain=1e-4)
-    if end.status is not LpStatus.OPTIMAL:
+    if lp.solve(setting.control.remaining_s()) is not LpStatus.OPTIMAL:
+        return None
+    if not _round_fleet(setting, bounder, bounds):
         return None
     frequency = setting.of.frequency
-    fixed = np.zeros(len(frequency), dtype=bool)
     for _ in range(_DIVE_STEPS):
         if setting.control.stop_requested() or setting.done.is_set():
             return None
         n = lp.values[frequency]
         away = np.abs(n - np.round(n))
-        broken = np.flatnonzero(~fixed & (away > _WHOLE))
+        broken = np.flatnonzero(away > _WHOLE)
         if not len(broken):
             return lp.values.copy()
-        whole = np.flatnonzero(~fixed & (away <= _WHOLE) & (n > 0.5))
-        for s in whole.tolist():
-            low = min(float(np.round(n[s])), float(setting.upper[frequency[s]]))
-            bounds[int(frequency[s])] = (low, float(setting.upper[frequency[s]]))
         target = np.where(n - np.floor(n) >= _ROUND_UP, np.ceil(n), np.floor(n))
         order = broken[np.argsort(np.abs(target - n)[broken], kind="stable")]
-        batch = order[: max(1, int(np.ceil(len(order) * _STEP_SHARE)))]
-        for s in batch.tolist():
-            at = min(float(target[s]), float(setting.upper[frequency[s]]))
-            bounds[int(frequency[s])] = (at, at)
-        fixed[batch] = True
-        bounder.fix(bounds)
-        if lp.solve(setting.control.remaining_s()) is LpStatus.OPTIMAL:
-            continue
-        for s in batch.tolist():
-            high = float(setting.upper[frequency[s]])
-            bounds[int(frequency[s])] = (min(float(np.ceil(n[s])), high), high)
-        fixed[batch] = False
-        for s in np.flatnonzero(fixed).tolist():
-            low = bounds[int(frequency[s])][0]
-            bounds[int(frequency[s])] = (low, float(setting.upper[frequency[s]]))
-        fixed[:] = False
-        bounder.fix(bounds)
-        if lp.solve(setting.control.remaining_s()) is not LpStatus.OPTIMAL:
-            return None
+        size = max(1, int(np.ceil(len(order) * _STEP_SHARE)))
+        while True:
+            before = {int(frequency[s]): bounds.get(int(frequency[s])) for s in order[:size].tolist()}
+            for s in order[:size].tolist():
+                low, high = before[int(frequency[s])] or (0.0, float(setting.upper[frequency[s]]))
+                up = target[s] > n[s] and target[s] <= high
+                bounds[int(frequency[s])] = (float(target[s]), high) if up else (low, float(np.floor(n[s])))
+            bounder.fix(bounds)
+            if lp.solve(setting.control.remaining_s()) is LpStatus.OPTIMAL:
+                break
+            for column, old in before.items():
+                if old is None:
+                    del bounds[column]
+                else:
+                    bounds[column] = old
+            if size > 1:
+                size = max(1, size // 4)
+            elif not _release_fleet(setting, bounds):
+                # The last resort: this one at least rounded up, the others free to follow.
+                s = int(order[0])
+                high = float(setting.upper[frequency[s]])
+                bounds[int(frequency[s])] = (min(float(np.ceil(n[s])), high), high)
+                bounder.fix(bounds)
+                if lp.solve(setting.control.remaining_s()) is not LpStatus.OPTIMAL:
+                    return None
+                break
     return None
+
+
+def _round_fleet(setting: Setting, bounder: Bounder, bounds: dict[int, tuple[float, float]]) -> bool:
+    """Limit the fleet to whole counts, the dearest type first, rounding to the nearest; False without a way.
+
+    Rounded only at the end, counts would be rounded up, each a vehicle that hardly flies.
+    """
+    lp = bounder.lp
+    fleet = setting.of.vehicles
+    price = setting.objective.coefficients[fleet]
+    for v in np.argsort(-price, kind="stable").tolist():
+        column = int(fleet[v])
+        count = float(lp.values[column])
+        if setting.upper[column] <= 0.0 or price[v] <= 0.0:
+            continue
+        for most in dict.fromkeys((float(np.round(count)), float(np.ceil(count - _WHOLE)))):
+            at = min(max(most, float(setting.lower[column])), float(setting.upper[column]))
+            bounds[column] = (at, at)
+            bounder.fix(bounds)
+            if lp.solve(setting.control.remaining_s()) is LpStatus.OPTIMAL:
+                break
+        else:
+            _release_fleet(setting, bounds)
+            bounder.fix(bounds)
+            return lp.solve(setting.control.remaining_s()) is LpStatus.OPTIMAL
+    return True
+
+
+def _release_fleet(setting: Setting, bounds: dict[int, tuple[float, float]]) -> bool:
+    """Lift the limits that a dive put on the fleet; whether there were any."""
+    limited = [c for c in setting.of.vehicles.tolist() if c in bounds]
+    for column in limited:
+        del bounds[column]
+    return bool(limited)
+
+
+def round_up(setting: Setting, values: Floats) -> Floats:
+    """Return `values` with departures rounded up and every hub in use open: a plan nearly always.
+
+    Poor, but there within a second: the first line of the record.
+    """
+    result = values.copy()
+    of = setting.of
+    result[of.frequency] = np.minimum(np.ceil(values[of.frequency] - _WHOLE), setting.upper[of.frequency])
+    result[of.hub] = likely_hubs(setting, values, _WHOLE)
+    return result
 
 
 def neighbourhood(
     setting: Setting,
-    lp: LinearModel,
+    rows: RowSet,
     point: Floats,
     relaxed: Floats,
     *,
@@ -134,13 +187,10 @@ def neighbourhood(
     upper[setting.of.frequency] = np.where(opened[service_link], high, 0.0)
     lower[setting.of.frequency] = np.where(opened[service_link], np.minimum(low, high), 0.0)
     best = setting.cutoff
-    model = Restricted(setting, lower, upper, lp)
+    model = Restricted(setting, lower, upper, rows)
     model.add_start(point)
-    control = setting.control
+    control = StepControl(setting.control, setting.done)
     model.set_priorities(branching_priorities(setting))
-    setting.interrupts.append(model.scip.scip.interruptSolve)
-    if setting.done.is_set():
-        return False
     model.run(
         control,
         gap=1e-5,
@@ -148,7 +198,6 @@ def neighbourhood(
         on_plan=lambda values: _offer(setting, values),
         settings={"separating/maxrounds": 1, "separating/maxroundsroot": 5, "heuristics/rins/freq": 10},
     )
-    setting.interrupts.clear()
     model.free()
     return setting.cutoff < best - 1e-9 * abs(best)
 
@@ -166,100 +215,153 @@ def branching_priorities(setting: Setting) -> Floats:
     return result
 
 
+@dataclass
+class HubSet:
+    """What is known of a set of hubs: its LP with the bound reached, None once it has been dived into."""
+
+    bound: float
+    rows: RowSet
+    values: Floats
+    lp: LinearModel | None
+    dived: bool = False
+
+
 class PlanSide:
-    """Dives and restricted searches, one step at a time; may live on a thread of its own."""
+    """Dives and restricted searches, one step at a time; may live on a thread of its own.
+
+    Hub sets are first relaxed (bounded by their LP), then dived into in order of that bound; around the best
+    one its neighbours (one hub more or less) are looked at too.
+    """
 
     def __init__(self, setting: Setting) -> None:
         self.setting = setting
         self._lock = threading.Lock()
-        self._lp: LinearModel | None = None
-        self._relaxed: Floats | None = None
-        self._waiting: list[tuple[float, tuple[int, ...]]] = []
-        self._tried: set[tuple[int, ...]] = set()
+        self._rows: RowSet | None = None
+        self._asked: list[tuple[int, ...]] = []
+        self._known: dict[tuple[int, ...], HubSet] = {}
         self._round = 0
         self._searched: Floats | None = None
-        self._started = False
+        self._turns = 0
+        self.wants_rows = True
 
     # -- news from the bound side ----------------------------------------------------------------------
 
-    def wants_lp(self) -> bool:
-        """Whether a copy of the bound side's LP is of use."""
-        return self._lp is None
-
-    def hand_lp(self, lp: LinearModel, values: Floats) -> None:
-        """Take over an LP (a copy that nobody else uses) and its relaxed values."""
-        with self._lock:
-            self._lp, self._relaxed = lp, values
-            self._started = True
+    def hand_rows(self, rows: RowSet, values: Floats) -> None:
+        """Take note of the rows and values of the root."""
+        self._rows, self.wants_rows = rows, False
+        most = float(values[self.setting.of.hub].max(initial=0.0))
+        for threshold in (0.5, 0.25, 0.75):
+            hubs = likely_hubs(self.setting, values, threshold * most)
+            self._ask(tuple(np.flatnonzero(hubs).tolist()))
 
     def propose(self, bound: float, values: Floats) -> None:
-        """Take note of a hub set with the bound of its LP."""
-        hubs = tuple(np.flatnonzero(values[self.setting.of.hub] > 0.5).tolist())
+        """Take note of a hub set that the tree found promising."""
+        if bound < self.setting.target:
+            self._ask(tuple(np.flatnonzero(values[self.setting.of.hub] > 0.5).tolist()))
+
+    def _ask(self, hubs: tuple[int, ...]) -> None:
         with self._lock:
-            if hubs not in self._tried and all(other != hubs for _, other in self._waiting):
-                self._waiting.append((bound, hubs))
-                self._waiting.sort()
+            if hubs not in self._known and hubs not in self._asked:
+                self._asked.append(hubs)
 
     # -- work ------------------------------------------------------------------------------------------
 
     def step(self) -> bool:
         """Do the most promising piece of work; whether there was one."""
         setting = self.setting
-        with self._lock:
-            lp, relaxed = self._lp, self._relaxed
-        if lp is None or relaxed is None:
+        if self._rows is None:
             return False
-        if not self._tried:
-            for threshold in (0.5, 0.25, 0.75):
-                self.propose(-np.inf, self._rounded(relaxed, threshold))
+        self._turns += 1
+        fresh = setting.point is not None and self._searched is not setting.point
+        if fresh and self._turns % (_STEPS_BETWEEN + 1) == 0:
+            return self._search()
         with self._lock:
-            while self._waiting and self._waiting[0][0] >= setting.target:
-                self._waiting.pop(0)
-            entry = self._waiting.pop(0) if self._waiting else None
-        if setting.plan is not None and self._searched is not setting.point:
-            if entry is not None:
-                with self._lock:
-                    self._waiting.insert(0, entry)
-            self._search(lp, relaxed)
+            hubs = self._asked.pop(0) if self._asked else None
+        if hubs is not None:
+            self._relax(hubs)
+            if setting.plan is None or len(self._known) == 1:
+                self._dive(hubs)
             return True
-        if entry is not None:
-            self._dive(lp, entry[1])
+        waiting = [
+            (known.bound, hubs)
+            for hubs, known in self._known.items()
+            if not known.dived and known.bound < setting.target
+        ]
+        if waiting:
+            self._dive(min(waiting)[1])
             return True
-        if self._round < len(_WIDTHS) and setting.plan is not None:
-            self._search(lp, relaxed)
-            return True
+        if fresh or (setting.point is not None and self._round < len(_WIDTHS)):
+            return self._search()
         return False
 
-    def _rounded(self, relaxed: Floats, threshold: float) -> Floats:
-        values = np.zeros(len(relaxed))
-        values[self.setting.of.hub] = likely_hubs(self.setting, relaxed, threshold)
-        return values
-
-    def _dive(self, lp: LinearModel, hubs: tuple[int, ...]) -> None:
+    def _relax(self, hubs: tuple[int, ...]) -> None:
+        """Bound a hub set by its LP; where it is the best so far, ask for its neighbours."""
         setting = self.setting
-        self._tried.add(hubs)
-        chosen = np.zeros(len(setting.of.hub), dtype=bool)
-        chosen[list(hubs)] = True
-        values = dive(setting, lp, chosen)
-        if values is not None:
-            setting.offer(values)
+        assert self._rows is not None
+        lower, upper = setting.lower.copy(), setting.upper.copy()
+        chosen = np.zeros(len(setting.of.hub))
+        chosen[list(hubs)] = 1.0
+        lower[setting.of.hub] = upper[setting.of.hub] = chosen
+        lp = sub_lp(setting, self._rows, lower, upper)
+        end = Bounder(setting, lp).rounds(3, least_gain=5e-4)
+        if end.status is not LpStatus.OPTIMAL:
+            self._known[hubs] = HubSet(np.inf, self._rows, np.zeros(0), None, dived=True)
+            return
+        best = min((known.bound for known in self._known.values()), default=np.inf)
+        self._known[hubs] = HubSet(lp.objective, lp.tight(), lp.values.copy(), lp)
+        if lp.objective < best:
+            for other in self._neighbours(hubs):
+                self._ask(other)
+        self._forget()
 
-    def _search(self, lp: LinearModel, relaxed: Floats) -> None:
+    def _forget(self) -> None:
+        """Keep the LPs of the most promising sets only."""
+        holding = sorted((known.bound, hubs) for hubs, known in self._known.items() if known.lp is not None)
+        for _, hubs in holding[_MOST_LPS:]:
+            self._known[hubs].lp = None
+            self._known[hubs].dived = True
+
+    def _neighbours(self, hubs: tuple[int, ...]) -> list[tuple[int, ...]]:
+        """Return the hub sets with one hub more or less, within the count and the musts."""
+        setting = self.setting
+        fewest, most = setting.model.network.problem.settings.hub_count
+        result = []
+        for i in np.flatnonzero(setting.upper[setting.of.hub] > 0.0).tolist():
+            other = tuple(sorted(set(hubs) ^ {i}))
+            if setting.lower[setting.of.hub[i]] > 0.0 and i in hubs:
+                continue
+            if fewest <= len(other) and (most is None or len(other) <= most):
+                result.append(other)
+        return result
+
+    def _dive(self, hubs: tuple[int, ...]) -> None:
+        known = self._known[hubs]
+        known.dived = True
+        if known.lp is None:
+            return
+        values = dive(self.setting, known.lp)
+        known.lp = None
+        if values is not None:
+            self.setting.offer(values)
+
+    def _search(self) -> bool:
         """Search around the best plan; wider when the last search brought nothing."""
         setting = self.setting
         point = setting.point
         if point is None:
-            return
+            return False
         if self._searched is not point:
             self._round = 0
         width, reopen, nodes, free_hubs = _WIDTHS[self._round]
-        hubs = np.round(point[setting.of.hub]) > 0
-        local = self._local(lp, hubs)
+        hubs = tuple(np.flatnonzero(np.round(point[setting.of.hub]) > 0).tolist())
+        if hubs not in self._known:
+            self._relax(hubs)
+        known = self._known[hubs]
         neighbourhood(
             setting,
-            lp,
+            known.rows,
             point,
-            relaxed if local is None else local,
+            known.values if len(known.values) else point,
             width=width,
             reopen=reopen,
             node_limit=nodes,
@@ -268,19 +370,4 @@ class PlanSide:
         better = setting.point is not point
         self._searched = setting.point
         self._round = 0 if better else self._round + 1
-
-    def _local(self, lp: LinearModel, hubs: Bools) -> Floats | None:
-        """Return the relaxed values with the plan's own hubs."""
-        setting = self.setting
-        bounder = Bounder(setting, lp)
-        bounds = {
-            int(setting.of.hub[i]): (float(hubs[i]), float(hubs[i]))
-            for i in np.flatnonzero(setting.upper[setting.of.hub] > 0.0).tolist()
-        }
-        # The dive before has left its own bounds: all whole columns are set back.
-        lp.set_bounds(setting.integer, setting.lower[setting.integer], setting.upper[setting.integer])
-        bounder.fix(bounds)
-        if bounder.rounds(2, least_gain=1e-4).status is not LpStatus.OPTIMAL:
-            return None
-        values = lp.values.copy()
-        return values
+        return True

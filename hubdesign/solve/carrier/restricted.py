@@ -10,7 +10,6 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 from hubdesign.model.program import Program
-from hubdesign.solve.carrier.linear import LinearModel
 from hubdesign.solve.carrier.setting import RowSet, Setting
 from hubdesign.solve.control import Control
 from hubdesign.solve.scip import MipEnd, ScipModel
@@ -25,12 +24,10 @@ _LAZY_ROWS = 8_000
 class Restricted:
     """The problem of `setting` within `lower` and `upper`, with rows on top, in SCIP.
 
-    `rows` are pool rows and cuts; None takes those in `lp`, whose base rows are used in any case.
+    `rows` are pool rows and cuts; the rows of the model are there in any case.
     """
 
-    def __init__(
-        self, setting: Setting, lower: Floats, upper: Floats, lp: LinearModel, rows: RowSet | None = None
-    ) -> None:
+    def __init__(self, setting: Setting, lower: Floats, upper: Floats, rows: RowSet) -> None:
         self.setting = setting
         upper = setting.follow(upper)
         self.columns = np.flatnonzero((upper > 0.0) | (lower > 0.0))
@@ -43,9 +40,10 @@ class Restricted:
             label=lambda member: setting.program.name_of(int(self.columns[member])),
         )
         program._integer = [setting.program.integer[self.columns]]
-        self._add_rows(program, lp.base, lp.base_lower, lp.base_upper)
-        added = self._cut_down(*(lp.added() if rows is None else rows))
-        lazy = self._cut_down(lp.pool, lp.pool_lower, lp.pool_upper)
+        for block in setting.base_rows:
+            self._add_rows(program, *block)
+        added = self._cut_down(*rows)
+        lazy = self._cut_down(*setting.pool_rows)
         extra = [lazy] if lazy[0].shape[0] <= _LAZY_ROWS else []
         self.program = program
         self.scip = ScipModel(program, setting.objective.coefficients[self.columns], [added], extra)
@@ -109,7 +107,7 @@ class Restricted:
         scip.setParam("limits/totalnodes", total_nodes)
         remaining = max(0.01, self.setting.control.remaining_s())
         scip.setParam("limits/time", min(1e20, scip.getSolvingTime() + remaining))
-        with self.setting.control.interrupting(scip.interruptSolve):
+        with self.setting.control.interrupting(self.scip.interrupt):
             scip.optimizeNogil()
         return self.scip._end(scip.getObjlimit())
 

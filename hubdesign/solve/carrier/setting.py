@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import threading
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -26,7 +25,7 @@ Bools = NDArray[np.bool_]
 RowSet = tuple[sparse.csr_array, Floats, Floats]
 
 #: With more flow columns than this, itineraries of two transfers enter the LP only when they price in.
-_ALL_COLUMNS = 4000
+ALL_COLUMNS = 4000
 
 
 @dataclass(frozen=True)
@@ -40,6 +39,18 @@ class Families:
     purchases: Ints
     unserved: Ints
     flow: Ints
+
+
+class StepControl(Control):
+    """A Control of a step that also stops when the bound side has finished."""
+
+    def __init__(self, whole: Control, done: threading.Event) -> None:
+        super().__init__(whole.remaining_s(), whole.gap, whole.threads, whole.seed, whole.maximise)
+        self._whole, self._done = whole, done
+
+    def stop_requested(self) -> bool:
+        """Whether the limit is reached, somebody asked to stop, or nobody needs the step any more."""
+        return self._done.is_set() or self._whole.stop_requested() or super().stop_requested()
 
 
 class Setting:
@@ -75,12 +86,14 @@ class Setting:
         self.groups = np.full(program.column_count, -1, dtype=np.int64)
         self.groups[self.of.flow] = model.flows.demand
         self.groups[self.of.unserved] = np.arange(len(self.of.unserved))
+        rows, pool, count = program.rows, program.pool, program.column_count
+        self.base_rows: tuple[RowSet, ...] = ((rows.matrix(count), rows.lower, rows.upper), *held)
+        self.pool_rows: RowSet = (pool.matrix(count), pool.lower, pool.upper)
         self.cuts = CutMaker(model)
         self._lock = threading.Lock()
         self.plan: Plan | None = None
         self.point: Floats | None = None
         self.bound = -np.inf
-        self.interrupts: list[Callable[[], None]] = []  # stop restricted searches that nobody needs any more
         self.done = threading.Event()  # the bound side has finished
 
     def _closing_data(self) -> None:
@@ -116,7 +129,7 @@ class Setting:
         cutoff = self.cutoff
         if not np.isfinite(cutoff) or self.plan is None:
             return np.inf
-        give = max(0.98 * self.control.gap, 1e-7) * abs(self.plan.value) / self.objective.scale
+        give = max(0.9 * self.control.gap, 1e-7) * abs(self.plan.value) / self.objective.scale
         return cutoff - give
 
     def offer(self, values: Floats) -> Plan | None:
@@ -144,9 +157,8 @@ class Setting:
         fixed[self.integer] = np.round(values[self.integer])
         carries = np.zeros(len(self.of.link))
         np.add.at(carries, self._service_link, fixed[self.of.frequency])
-        fixed[self.of.link] = np.maximum(
-            np.minimum(fixed[self.of.link], np.minimum(carries, 1.0)), self.lower[self.of.link]
-        )
+        # A link is open where something flies on it, whatever share of it an LP had opened.
+        fixed[self.of.link] = np.maximum(np.minimum(carries, 1.0), self.lower[self.of.link])
         set_fleet(self.model, fixed)
         whole = self.integer
         fixed[whole] = np.clip(fixed[whole], lower[whole], upper[whole])
@@ -180,7 +192,7 @@ class Setting:
         active = self.upper > 0.0
         active[self.integer] = True
         flows = self.model.flows
-        if int(active[self.of.flow].sum()) > _ALL_COLUMNS:
+        if int(active[self.of.flow].sum()) > ALL_COLUMNS:
             late = flows.itineraries.transfers[flows.of_itinerary] >= 2
             active[self.of.flow[late]] = False
         return active

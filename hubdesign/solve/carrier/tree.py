@@ -20,10 +20,10 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.solve.carrier.bounding import Bounder
+from hubdesign.solve.carrier.bounding import Bounder, sub_lp
 from hubdesign.solve.carrier.planning import branching_priorities
 from hubdesign.solve.carrier.restricted import Restricted
-from hubdesign.solve.carrier.setting import RowSet, Setting
+from hubdesign.solve.carrier.setting import RowSet, Setting, StepControl
 from hubdesign.solve.relaxation import LpStatus
 from hubdesign.solve.scip import MipEnd, MipStatus
 
@@ -34,9 +34,9 @@ _LOG = logging.getLogger(__name__)
 
 _WHOLE = 1e-6
 
-#: Separation rounds of a node and the relative gain below which they end.
-_NODE_ROUNDS = 4
-_NODE_GAIN = 1e-4
+#: Separation rounds of a node and the relative gain below which they end, with hubs free and with hubs whole.
+_HUB_ROUNDS, _HUB_GAIN = 2, 5e-4
+_NODE_ROUNDS, _NODE_GAIN = 6, 1e-4
 
 #: SCIP nodes of a leaf's first slice; each further slice adds as many as all before.
 _SLICE = 500
@@ -88,13 +88,15 @@ class Node:
     bound: float
     number: int
     fixings: dict[int, tuple[float, float]] = field(compare=False)
+    bounder: Bounder | None = field(default=None, compare=False)
     leaf: Leaf | None = field(default=None, compare=False)
 
 
 class Tree:
     """Best-first search over `bounder`.
 
-    `on_hubs` hears of each node whose hubs have all become whole: bound and LP values.
+    `on_hubs` hears of each node whose hubs have all become whole: bound and LP values. `after_node` is called
+    after each node and told whether it was a leaf.
     """
 
     def __init__(
@@ -103,11 +105,12 @@ class Tree:
         bounder: Bounder,
         bound: float,
         on_hubs: Callable[[float, Floats], None] | None = None,
-        after_node: Callable[[], None] | None = None,
+        after_node: Callable[[bool], None] | None = None,
     ) -> None:
         self.setting, self.bounder = setting, bounder
         self.heap: list[Node] = [Node(bound, 0, {})]
         self.left = np.inf  # smallest bound of the nodes left as good enough
+        self._rows: RowSet = bounder.lp.tight()
         self.count = 0
         self.nodes = 0
         self.finished = False
@@ -177,10 +180,11 @@ class Tree:
                         break
                     self._moved.wait(0.05)
                 continue
-            again = self._leaf(node) if node.leaf is not None else self._bound(node)
+            was_leaf = node.leaf is not None
+            again = self._leaf(node) if was_leaf else self._bound(node)
             self._done(node, again)
             if self._after_node is not None:
-                self._after_node()
+                self._after_node(was_leaf)
         setting.improve_bound(self.bound)
         return self.finished
 
@@ -195,21 +199,23 @@ class Tree:
     def _bound(self, node: Node) -> bool:
         """Bound a node by its LP, then branch, close or hand on; True where it stays open as it is."""
         setting = self.setting
-        self.bounder.fix(node.fixings)
-        end = self.bounder.rounds(_NODE_ROUNDS, least_gain=_NODE_GAIN, enough=lambda: setting.target)
+        bounder = self._bounder_of(node)
+        bounder.fix(node.fixings)
+        rounds, gain = (_HUB_ROUNDS, _HUB_GAIN) if bounder is self.bounder else (_NODE_ROUNDS, _NODE_GAIN)
+        end = bounder.rounds(rounds, least_gain=gain, enough=lambda: setting.target)
         self.nodes += 1
         if end.status is LpStatus.INFEASIBLE:
             return False
         node.bound = max(node.bound, end.bound)
         if end.status is not LpStatus.OPTIMAL:
             return True
-        values = self.bounder.lp.values
+        values = bounder.lp.values
         _LOG.debug(
             "node %d at %.1f s: bound %.6g, %d rows, fleet %s",
             node.number,
             setting.control.elapsed_s(),
             setting.objective.value_of(node.bound),
-            self.bounder.lp.row_count,
+            bounder.lp.row_count,
             values[setting.of.vehicles].round(2),
         )
         if node.bound >= setting.target:
@@ -217,9 +223,23 @@ class Tree:
             return False
         column = self._hub_or_fleet(node, values)
         if column is None:
-            return self._make_leaf(node, values)
-        self._branch(node, column, float(values[column]))
+            return self._make_leaf(node, bounder, values)
+        self._branch(node, bounder, column, float(values[column]))
         return False
+
+    def _bounder_of(self, node: Node) -> Bounder:
+        """Return the LP of a node: the common one, or a smaller one of its own once all hubs are fixed."""
+        if node.bounder is None:
+            hubs = [
+                c for c in self.setting.of.hub.tolist() if self.bounder.lp.upper[c] > self.bounder.lp.lower[c]
+            ]
+            if not hubs or not all(c in node.fixings for c in hubs):
+                return self.bounder
+            lower, upper = self.bounder.lp.lower.copy(), self.bounder.lp.upper.copy()
+            for column in hubs:
+                lower[column], upper[column] = node.fixings[column]
+            node.bounder = Bounder(self.setting, sub_lp(self.setting, self._rows, lower, upper))
+        return node.bounder
 
     def _hub_or_fleet(self, node: Node, values: Floats) -> int | None:
         """Return the most fractional hub, else the fleet count that weighs most, None where all are whole."""
@@ -227,6 +247,9 @@ class Tree:
         away = _distance(values[setting.of.hub])
         if (away > _WHOLE).any():
             return int(setting.of.hub[int(np.argmax(away))])
+        for column in setting.of.hub[setting.upper[setting.of.hub] > setting.lower[setting.of.hub]].tolist():
+            if column not in node.fixings:
+                return int(column)
         if self._on_hubs is not None and not any(c in node.fixings for c in setting.of.vehicles.tolist()):
             self._on_hubs(node.bound, values)
         away = _distance(values[setting.of.vehicles])
@@ -235,25 +258,32 @@ class Tree:
             return int(setting.of.vehicles[int(np.argmax(np.where(away > _WHOLE, away * weight, -1.0)))])
         return None
 
-    def _branch(self, node: Node, column: int, value: float) -> None:
-        low, high = self.bounder.lower[column], self.bounder.upper[column]
+    def _branch(self, node: Node, bounder: Bounder, column: int, value: float) -> None:
+        low, high = bounder.lower[column], bounder.upper[column]
+        value = min(max(value, low), high)
         down, up = np.floor(value), np.floor(value) + 1.0
+        if bounder is self.bounder:
+            self._rows = bounder.lp.tight()
         with self._lock:
             for bounds in ((float(low), float(down)), (float(up), float(high))):
                 if bounds[0] <= bounds[1]:
                     self.count += 1
-                    heapq.heappush(self.heap, Node(node.bound, self.count, {**node.fixings, column: bounds}))
+                    heapq.heappush(
+                        self.heap,
+                        Node(node.bound, self.count, {**node.fixings, column: bounds}, node.bounder),
+                    )
 
     # -- leaves ----------------------------------------------------------------------------------------
 
-    def _make_leaf(self, node: Node, values: Floats) -> bool:
+    def _make_leaf(self, node: Node, bounder: Bounder, values: Floats) -> bool:
         setting = self.setting
         if not (_distance(values[setting.integer]) > _WHOLE).any():
             setting.offer(values)
-            self._leave(node)
-            return False
-        lp = self.bounder.lp
-        node.leaf = Leaf(self.bounder.lower.copy(), self.bounder.upper.copy(), lp.tight())
+            if node.bound >= setting.target:
+                self._leave(node)
+                return False
+        node.leaf = Leaf(bounder.lower.copy(), bounder.upper.copy(), bounder.lp.tight())
+        node.bounder = None
         return True
 
     def _leaf(self, node: Node) -> bool:
@@ -282,14 +312,14 @@ class Tree:
         setting = self.setting
         if leaf.model is not None:
             return leaf.model.resume(leaf.nodes, limit)
-        leaf.model = Restricted(setting, leaf.lower, leaf.upper, self.bounder.lp, leaf.rows)
+        leaf.model = Restricted(setting, leaf.lower, leaf.upper, leaf.rows)
         leaf.model.set_priorities(branching_priorities(setting))
 
         def hear(point: Floats) -> None:
             setting.offer(point)
 
         return leaf.model.run(
-            setting.control,
+            StepControl(setting.control, setting.done),
             objective_limit=limit if np.isfinite(limit) else None,
             on_plan=hear,
             settings={"limits/totalnodes": leaf.nodes, **_LEAF_SETTINGS},
