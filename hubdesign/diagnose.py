@@ -140,12 +140,40 @@ def prove_must_links(network: Network) -> list[str]:
     return told
 
 
+def prove_station_capacity(network: Network) -> list[str]:
+    """Volume that must leave or reach a station exceeds all that its links and departures can offer."""
+    settings, data, leg = network.problem.settings, network.demand, network.leg
+    least = data.min_share if settings.unserved_allowed else np.ones(len(data.volume))
+    due = np.where(data.origin != data.destination, data.volume * least, 0.0)
+    offered, largest = _leg_offers(network)
+    told = []
+    for i, row in enumerate(network.problem.stations):
+        for word, ends, at in (("leave", data.origin, leg.tail), ("reach", data.destination, leg.head)):
+            volume, offer = float(due[ends == i].sum()), float(offered[at == i].sum())
+            if word == "leave" and network.problem.has_fleet:
+                offer = min(offer, float(network.station.max_departures[i]) * largest)
+            if volume > offer * (1 + 1e-9):
+                told.append(f"{volume:,.6g} of volume must {word} {row.station}, at most {offer:,.6g} can")
+    return told
+
+
+def _leg_offers(network: Network) -> tuple[Floats, float]:
+    """Return the most volume each leg can carry, and the most that any departure can."""
+    link, settings, service = network.link, network.problem.settings, network.service
+    if not network.problem.has_fleet:
+        return link.capacity[network.leg.link], np.inf
+    usable = np.zeros(network.link_count)
+    np.maximum.at(usable, service.link, settings.max_load_factor * service.capacity)
+    return (usable * np.floor(link.max_frequency))[network.leg.link], float(usable.max(initial=0.0))
+
+
 CHEAP_PROOFS: tuple[Callable[[Network], list[str]], ...] = (
     prove_unreached_stations,
     prove_no_itinerary,
     prove_hub_counts,
     prove_collection_capacity,
     prove_must_links,
+    prove_station_capacity,
 )
 
 
