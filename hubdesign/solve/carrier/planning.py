@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import threading
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -28,15 +29,24 @@ _ROUND_UP = 0.5
 
 _DIVE_STEPS = 300
 
+#: Separation rounds before a dive: what the LP does not know yet, the dive pays for.
+_DIVE_ROUNDS = 6
+
 #: Relaxations and dives between two restricted searches, where all are wanted.
 _STEPS_BETWEEN = 5
+
+#: Hub sets whose plan is within this share of the best are searched around too.
+_NEAR = 0.01
 
 #: LPs of hub sets kept at the most.
 _MOST_LPS = 6
 
+#: Width that leaves departures free.
+_FREE = 10_000
+
 #: Restricted searches by how often the last ones failed: width of departures, reopening of links, SCIP
 #: nodes, hubs free.
-_WIDTHS = ((1, 0.3, 300, False), (2, 0.1, 600, False), (3, 0.02, 1500, False), (2, 0.1, 1000, True))
+_WIDTHS = ((1, 0.3, 300, False), (2, 0.05, 1000, False), (_FREE, 0.0, 3000, False), (2, 0.1, 1000, True))
 
 
 def likely_hubs(setting: Setting, values: Floats, threshold: float = 0.5) -> Bools:
@@ -62,8 +72,7 @@ def dive(setting: Setting, lp: LinearModel) -> Floats | None:
     """
     bounder = Bounder(setting, lp)
     bounds: dict[int, tuple[float, float]] = {}
-    bounder.fix(bounds)
-    if lp.solve(setting.control.remaining_s()) is not LpStatus.OPTIMAL:
+    if bounder.rounds(_DIVE_ROUNDS, least_gain=1e-4, patience=2).status is not LpStatus.OPTIMAL:
         return None
     if not _round_fleet(setting, bounder, bounds):
         return None
@@ -158,13 +167,14 @@ def neighbourhood(
     rows: RowSet,
     point: Floats,
     relaxed: Floats,
+    on_plan: Callable[[Floats], None],
     *,
     width: int,
     reopen: float,
     node_limit: int | None,
     free_hubs: bool = False,
-) -> bool:
-    """Search around `point` in SCIP; whether a better plan was found.
+) -> None:
+    """Search around `point` in SCIP; `on_plan` hears of every better plan.
 
     Hubs stay, departures move within `width`, links closed in the plan come back where the relaxation
     opens them more than `reopen`.
@@ -186,7 +196,6 @@ def neighbourhood(
     low = np.maximum(lower[setting.of.frequency], n - width)
     upper[setting.of.frequency] = np.where(opened[service_link], high, 0.0)
     lower[setting.of.frequency] = np.where(opened[service_link], np.minimum(low, high), 0.0)
-    best = setting.cutoff
     model = Restricted(setting, lower, upper, rows)
     model.add_start(point)
     control = StepControl(setting.control, setting.done)
@@ -195,15 +204,10 @@ def neighbourhood(
         control,
         gap=1e-5,
         node_limit=node_limit,
-        on_plan=lambda values: _offer(setting, values),
-        settings={"separating/maxrounds": 1, "separating/maxroundsroot": 5, "heuristics/rins/freq": 10},
+        on_plan=on_plan,
+        settings={"separating/maxrounds": 1, "separating/maxroundsroot": 10},
     )
     model.free()
-    return setting.cutoff < best - 1e-9 * abs(best)
-
-
-def _offer(setting: Setting, values: Floats) -> None:
-    setting.offer(values)
 
 
 def branching_priorities(setting: Setting) -> Floats:
@@ -217,13 +221,28 @@ def branching_priorities(setting: Setting) -> Floats:
 
 @dataclass
 class HubSet:
-    """What is known of a set of hubs: its LP with the bound reached, None once it has been dived into."""
+    """What is known of a set of hubs.
+
+    Attributes
+    ----------
+    bound, rows, values
+        Of its LP (scaled).
+    lp
+        The LP itself, None once it has been dived into.
+    point, value
+        The best plan with these hubs and its scaled value.
+    round
+        Restricted searches that brought nothing since the last that did.
+    """
 
     bound: float
     rows: RowSet
     values: Floats
     lp: LinearModel | None
     dived: bool = False
+    point: Floats | None = None
+    value: float = np.inf
+    round: int = 0
 
 
 class PlanSide:
@@ -239,8 +258,6 @@ class PlanSide:
         self._rows: RowSet | None = None
         self._asked: list[tuple[int, ...]] = []
         self._known: dict[tuple[int, ...], HubSet] = {}
-        self._round = 0
-        self._searched: Floats | None = None
         self._turns = 0
         self.wants_rows = True
 
@@ -272,9 +289,10 @@ class PlanSide:
         if self._rows is None:
             return False
         self._turns += 1
-        fresh = setting.point is not None and self._searched is not setting.point
-        if fresh and self._turns % (_STEPS_BETWEEN + 1) == 0:
-            return self._search()
+        best = self._most_promising()
+        fresh = best is not None and self._known[best].round == 0
+        if best is not None and fresh and self._turns % (_STEPS_BETWEEN + 1) == 0:
+            return self._search(best)
         with self._lock:
             hubs = self._asked.pop(0) if self._asked else None
         if hubs is not None:
@@ -290,9 +308,33 @@ class PlanSide:
         if waiting:
             self._dive(min(waiting)[1])
             return True
-        if fresh or (setting.point is not None and self._round < len(_WIDTHS)):
-            return self._search()
-        return False
+        return best is not None and self._search(best)
+
+    def _most_promising(self) -> tuple[int, ...] | None:
+        """Return the hub set to search around: the one tried least whose plan is near the best."""
+        setting = self.setting
+        self._take_in(setting.point, setting.cutoff)
+        near = setting.cutoff + _NEAR * abs(setting.cutoff)
+        open_sets = [
+            (known.round, known.value, hubs)
+            for hubs, known in self._known.items()
+            if known.point is not None
+            and known.round < len(_WIDTHS)
+            and known.bound < setting.target
+            and known.value <= near
+        ]
+        return min(open_sets)[2] if open_sets else None
+
+    def _take_in(self, point: Floats | None, value: float) -> None:
+        """Note a plan under its hub set."""
+        if point is None:
+            return
+        hubs = tuple(np.flatnonzero(np.round(point[self.setting.of.hub]) > 0).tolist())
+        if hubs not in self._known:
+            self._relax(hubs)
+        known = self._known[hubs]
+        if value < known.value - 1e-9 * abs(value):
+            known.point, known.value, known.round = point, value, 0
 
     def _relax(self, hubs: tuple[int, ...]) -> None:
         """Bound a hub set by its LP; where it is the best so far, ask for its neighbours."""
@@ -342,32 +384,32 @@ class PlanSide:
         values = dive(self.setting, known.lp)
         known.lp = None
         if values is not None:
-            self.setting.offer(values)
+            self._offer(values)
 
-    def _search(self) -> bool:
-        """Search around the best plan; wider when the last search brought nothing."""
+    def _offer(self, values: Floats) -> None:
+        """Offer a plan, and note it under its hub set even where it is not the best."""
         setting = self.setting
-        point = setting.point
-        if point is None:
-            return False
-        if self._searched is not point:
-            self._round = 0
-        width, reopen, nodes, free_hubs = _WIDTHS[self._round]
-        hubs = tuple(np.flatnonzero(np.round(point[setting.of.hub]) > 0).tolist())
-        if hubs not in self._known:
-            self._relax(hubs)
+        point = setting.settle(values)
+        if point is not None:
+            plan = setting.take(point)
+            self._take_in(point, setting.objective.scaled(plan.value))
+
+    def _search(self, hubs: tuple[int, ...]) -> bool:
+        """Search around the best plan of a hub set; wider when the last search brought nothing."""
         known = self._known[hubs]
+        if known.point is None:
+            return False
+        width, reopen, nodes, free_hubs = _WIDTHS[known.round]
+        known.round += 1
         neighbourhood(
-            setting,
+            self.setting,
             known.rows,
-            point,
-            known.values if len(known.values) else point,
+            known.point,
+            known.values if len(known.values) else known.point,
+            self._offer,
             width=width,
             reopen=reopen,
             node_limit=nodes,
             free_hubs=free_hubs,
         )
-        better = setting.point is not point
-        self._searched = setting.point
-        self._round = 0 if better else self._round + 1
         return True

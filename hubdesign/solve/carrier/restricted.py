@@ -111,6 +111,10 @@ class Restricted:
             scip.optimizeNogil()
         return self.scip._end(scip.getObjlimit())
 
+    def interrupt(self) -> None:
+        """Have SCIP stop."""
+        self.scip.interrupt()
+
     def free(self) -> None:
         """Give SCIP's memory back."""
         self.scip.scip.freeProb()

@@ -135,8 +135,10 @@ class Setting:
     def offer(self, values: Floats) -> Plan | None:
         """Make a plan of a point's integers, its flows worked out anew, and keep it if it is the best."""
         point = self.settle(values)
-        if point is None:
-            return None
+        return None if point is None else self.take(point)
+
+    def take(self, point: Floats) -> Plan:
+        """Price a settled point and keep its plan if it is the best."""
         design = tidy(self.model, read_design(self.model, point))
         bill = price(self.model.network, design)
         plan = Plan(design, bill, plan_value(bill, self.objective.phase))

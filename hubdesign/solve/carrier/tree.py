@@ -41,6 +41,9 @@ _NODE_ROUNDS, _NODE_GAIN = 6, 1e-4
 #: SCIP nodes of a leaf's first slice; each further slice adds as many as all before.
 _SLICE = 500
 
+#: A leaf is worked on until its bound passes the next node's by this share of its distance to the target.
+_LEVEL_MARGIN = 0.2
+
 #: Plans come from elsewhere: SCIP's dear heuristics cost a leaf half its nodes.
 _LEAF_SETTINGS = {
     f"heuristics/{name}/freq": -1
@@ -72,12 +75,16 @@ _LEAF_SETTINGS = {
 
 @dataclass
 class Leaf:
-    """A node with whole hubs and fleet: its bounds, the rows it was bounded with, its SCIP run."""
+    """A node with whole hubs and fleet: its bounds, the rows it was bounded with, its SCIP run.
+
+    A run pauses after `nodes` nodes in all, or once its bound passes `level`.
+    """
 
     lower: Floats
     upper: Floats
     rows: RowSet
     nodes: int = 0
+    level: float = np.inf
     model: Restricted | None = None
 
 
@@ -292,6 +299,7 @@ class Tree:
         assert leaf is not None
         limit = setting.target
         leaf.nodes = max(_SLICE, 2 * leaf.nodes)
+        leaf.level = self._level(node)
         end = self._slice(leaf, limit)
         proven = min(end.bound, limit)
         node.bound = max(node.bound, proven)
@@ -308,6 +316,16 @@ class Tree:
         self._leave(node)
         return False
 
+    def _level(self, node: Node) -> float:
+        """Return the bound from which on another node is more urgent than this one."""
+        with self._lock:
+            others = [other.bound for other in self.heap] + [
+                bound for number, bound in self._in_work.items() if number != node.number
+            ]
+        target = self.setting.target
+        margin = _LEVEL_MARGIN * (target - node.bound) if np.isfinite(target) else 0.0
+        return max(min(others, default=np.inf), node.bound) + margin
+
     def _slice(self, leaf: Leaf, limit: float) -> MipEnd:
         setting = self.setting
         if leaf.model is not None:
@@ -315,13 +333,20 @@ class Tree:
         leaf.model = Restricted(setting, leaf.lower, leaf.upper, leaf.rows)
         leaf.model.set_priorities(branching_priorities(setting))
 
+        model = leaf.model
+
         def hear(point: Floats) -> None:
             setting.offer(point)
+
+        def check(bound: float) -> None:
+            if bound >= leaf.level:
+                model.interrupt()
 
         return leaf.model.run(
             StepControl(setting.control, setting.done),
             objective_limit=limit if np.isfinite(limit) else None,
             on_plan=hear,
+            on_bound=check,
             settings={"limits/totalnodes": leaf.nodes, **_LEAF_SETTINGS},
         )
 
