@@ -40,7 +40,7 @@ VIOLATION = 1e-4
 #: The relaxation's objective is about this large; tolerances of the solver are 1e-7.
 SIZE = 1000.0
 #: HiGHS' names of its simplex strategies.
-_DUAL, _PRIMAL = 1, 4
+DUAL, PRIMAL = 1, 4
 
 
 class Formulation:
@@ -221,7 +221,7 @@ class PathRelaxation:
         """Bound the links."""
         changed = np.flatnonzero((lower != self.lower) | (upper != self.upper)).astype(np.int32)
         if len(changed):
-            self.highs.setOptionValue("simplex_strategy", _DUAL)
+            self.highs.setOptionValue("simplex_strategy", DUAL)
             self.highs.changeColsBounds(len(changed), changed, lower[changed], upper[changed])
         self.lower, self.upper = lower.copy(), upper.copy()
 
@@ -267,7 +267,7 @@ class PathRelaxation:
         extra = np.zeros((self.commodities, self.links))
         gain = np.zeros(self.links)
         if self.row_pairs:
-            k, e = self._pair_arrays()
+            k, e = (pairs[: len(self.v)] for pairs in self._pair_arrays())  # rows added since are at 0
             extra[k, e] = self.v
             gain += np.bincount(e, weights=self.v, minlength=self.links)
         gain += np.bincount(inst.link, weights=self.w * self.capacity_row_coefficient(), minlength=self.links)
@@ -321,11 +321,11 @@ class PathRelaxation:
                 return True
             # Columns leave the basis feasible for the primal simplex, rows for the dual one: never both.
             if self.objective - self.bound > tolerance * abs(self.objective) and self.add_paths(found):
-                self.highs.setOptionValue("simplex_strategy", _PRIMAL)
+                self.highs.setOptionValue("simplex_strategy", PRIMAL)
                 continue
             rows = self.violated(max(100, self.commodities * 2))
             if not rows:
                 return True
-            self.highs.setOptionValue("simplex_strategy", _DUAL)
+            self.highs.setOptionValue("simplex_strategy", DUAL)
             self.add_rows(rows)
         return True

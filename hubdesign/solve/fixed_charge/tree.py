@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from hubdesign.solve.control import Control
 from hubdesign.solve.fixed_charge.plan import FlowSolver, Incumbent
-from hubdesign.solve.fixed_charge.relaxation import PathRelaxation
+from hubdesign.solve.fixed_charge.relaxation import DUAL, PathRelaxation
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -29,7 +29,7 @@ _FRACTION = 1e-5
 #: Links probed at most where their effect is not known yet, simplex steps of a probe.
 _PROBES = 8
 _PROBE_STEPS = 40
-_RELIABLE = 3
+_RELIABLE = 1
 
 
 @dataclass(order=True)
@@ -128,7 +128,8 @@ class LinkTree:
         lp = self.lp
         self.nodes += 1
         lp.set_links(node.lower.astype(np.float64), node.upper.astype(np.float64))
-        whole = lp.solve(self.control, self._cutoff, rounds=40, tolerance=1e-5)
+        rounds, tolerance = (8, 1e-3) if self.plunge else (40, 1e-5)
+        whole = lp.solve(self.control, self._cutoff, rounds=rounds, tolerance=tolerance)
         bound = max(node.bound, lp.bound)
         if node.link >= 0 and np.isfinite(lp.bound):
             self._learn(node, bound)
@@ -206,12 +207,12 @@ class LinkTree:
         mean = np.where(known > 0, self._gain.sum(axis=1) / np.maximum(1.0, known), 1.0)
         rate = (self._gain + mean[:, None]) / (self._times + 1.0)
         down, up = rate[0, free] * y[free], rate[1, free] * (1.0 - y[free])
-        unknown = self._times[:, free].sum(axis=0) == 0
         guess = self.lp.form.fixed[free] * np.minimum(y[free], 1.0 - y[free])
         score = np.maximum(down, 1e-6) * np.maximum(up, 1e-6)
         order = np.argsort(-score * (1.0 + 1e-9 * guess), kind="stable")
-        probed = [i for i in order if self._times[:, free[i]].min() < _RELIABLE][:_PROBES]
-        del unknown
+        probed = [i for i in order if self._times[:, free[i]].min() < _RELIABLE][
+            : 2 if self.plunge else _PROBES
+        ]
         best, best_score = int(order[0]), -1.0
         if probed:
             results = self._probe(free[probed])
@@ -230,6 +231,7 @@ class LinkTree:
         basis = highs.getBasis()
         base = lp.objective
         y = lp.y.copy()
+        highs.setOptionValue("simplex_strategy", DUAL)
         highs.setOptionValue("simplex_iteration_limit", _PROBE_STEPS)
         scores = []
         for e in links.tolist():
