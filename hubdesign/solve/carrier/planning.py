@@ -297,7 +297,8 @@ class PlanSide:
             hubs = self._asked.pop(0) if self._asked else None
         if hubs is not None:
             self._relax(hubs)
-            if setting.plan is None or len(self._known) == 1:
+            if not any(known.dived and known.point is not None for known in self._known.values()):
+                # The first real plan comes before any further bound.
                 self._dive(hubs)
             return True
         waiting = [
