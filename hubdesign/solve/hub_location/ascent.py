@@ -31,7 +31,7 @@ BLOCK = 120_000
 #: Bisections of v; the dual loses at most 2**-9 of the range of path costs.
 BISECTIONS = 9
 #: Evaluations of v where the last cut's v is the first guess, and the first step from it, of the range.
-FROM_GUESS = 6
+FROM_GUESS = 7
 FIRST_STEP = 1.0 / 32.0
 #: A hub below this value is left out of the choice of v (never out of the cut).
 SMALL = 0.02
