@@ -109,6 +109,8 @@ class PathRelaxation:
         self._entry_arc: list[int] = []
         self.unserved = form.unserved.copy()
         self.capacity_row = np.full(self.arcs, 1.0)  # divisor of capacity under capacity scaling
+        self.one_way = bool(np.array_equal(inst.link, np.arange(inst.links)))
+        self.priced = -np.inf  # bound of the multipliers that `link_reduced` belongs to
         self._build()
         self.y = np.zeros(self.links)
         self.x = np.zeros(0)
@@ -279,6 +281,7 @@ class PathRelaxation:
         at_best = np.where(self.link_reduced > 0.0, self.lower, self.upper)
         carried = np.minimum(np.maximum(shortest - inst.nodes * STEP, 0.0), self.unserved)
         bound = float(carried.sum() + (self.link_reduced * at_best).sum())
+        self.priced = bound
         better = np.flatnonzero(shortest < self.pi - 1e-7 * (1.0 + np.abs(self.pi)))
         traced = form.finder.trace(cost, dist, better)
         return bound, [(int(k), arcs) for k, arcs in zip(better.tolist(), traced)]
@@ -296,8 +299,11 @@ class PathRelaxation:
     def violated(self, most: int) -> list[tuple[int, int]]:
         """Return the worst violated pairs of rows 3 that are not in yet."""
         shares = self.arc_shares() * self.form.per_row
-        by_link = np.zeros((self.commodities, self.links))
-        np.add.at(by_link.T, self.form.instance.link, shares.T)
+        if self.one_way:
+            by_link = shares
+        else:
+            by_link = np.zeros((self.commodities, self.links))
+            np.add.at(by_link.T, self.form.instance.link, shares.T)
         excess = by_link - self.y[None, :]
         excess[self.row_of >= 0] = 0.0
         found = np.flatnonzero(excess.ravel() > VIOLATION)

@@ -179,8 +179,7 @@ class LinkTree:
         lower, upper = node.lower.copy(), node.upper.copy()
         if not np.isfinite(cutoff):
             return lower, upper
-        lp_bound, _ = lp.price()
-        reduced = lp.link_reduced
+        lp_bound, reduced = lp.priced, lp.link_reduced
         free = lower < upper
         shut = free & (reduced > 0) & (lp_bound + reduced >= cutoff)
         held = free & (reduced < 0) & (lp_bound - reduced >= cutoff)
