@@ -211,6 +211,8 @@ def comparison_rows(comparison: Comparison, built: dict[str, Results]) -> list[t
         ("CO2 t", "totals", "co2_tonnes"),
     ):
         values = [None if results is None else getattr(results, part)[name] for results in entries]
+        if name == "profit" and not any(results.costs["revenue"] for results in entries if results):
+            continue
         if any(values):
             shares = name in ("load_factor", "nonstop_share")
             rows.append((label, [percent(v) if shares and v is not None else v for v in values]))
