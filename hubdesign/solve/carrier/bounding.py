@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 from hubdesign.solve.carrier.linear import LinearModel, rows_among
-from hubdesign.solve.carrier.setting import ALL_COLUMNS, RowSet, Setting
+from hubdesign.solve.carrier.setting import RowSet, Setting
 from hubdesign.solve.relaxation import LpStatus
 
 Floats = NDArray[np.float64]
@@ -31,7 +31,7 @@ _COLUMNS_EACH = 2
 
 #: A round with more new rows than this is solved by interior point and crossover, not by dual simplex.
 _INTERIOR_ROWS = 500
-_INTERIOR_SIZE = 6000
+INTERIOR_SIZE = 6000
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,7 +78,7 @@ class Bounder:
         """
         setting, lp = self.setting, self.lp
         best, last, weak = -np.inf, -np.inf, 0
-        interior: bool | None = True if lp.row_count > _INTERIOR_SIZE else None
+        interior: bool | None = True if lp.row_count > INTERIOR_SIZE else None
         for count in range(most + _PRICING_ROUNDS):
             status = lp.solve(setting.control.remaining_s(), interior=interior)
             if status is LpStatus.INFEASIBLE:
@@ -100,7 +100,7 @@ class Bounder:
                 break
             if count:
                 lp.drop_idle_rows(idle)
-            interior = added > _INTERIOR_ROWS and lp.row_count > _INTERIOR_SIZE
+            interior = added > _INTERIOR_ROWS and lp.row_count > INTERIOR_SIZE
         return NodeEnd(LpStatus.OPTIMAL, best)
 
     def _infeasible(self, best: float) -> NodeEnd:
@@ -146,12 +146,7 @@ def sub_lp(setting: Setting, rows: RowSet, lower: Floats, upper: Floats) -> Line
     `rows` are valid rows to start from (pool rows and cuts).
     """
     upper = setting.follow(upper)
-    active = upper > 0.0
-    active[setting.integer] = True
-    flows = setting.model.flows
-    if int(active[setting.of.flow].sum()) > ALL_COLUMNS:
-        late = flows.itineraries.transfers[flows.of_itinerary] >= 2
-        active[setting.of.flow[late]] = False
+    active = setting.start_columns(upper)
     lp = LinearModel(
         setting.program,
         setting.objective.coefficients,

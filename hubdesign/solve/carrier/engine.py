@@ -130,7 +130,9 @@ class PhaseRun:
         def on_round(bound: float) -> None:
             setting.improve_bound(bound)
             self._rounds += 1
-            if setting.plan is None and self._rounds <= 2:
+            if self._rounds == 1:
+                setting.offer(np.zeros(len(lp.values)))  # nothing at all: often allowed, never below 0
+            if self._rounds <= 2:
                 setting.offer(round_up(setting, lp.values))
             if self._rounds >= 3 and self.plans.wants_rows and self.control.threads > 1:
                 self.plans.hand_rows(lp.tight(), lp.values.copy())

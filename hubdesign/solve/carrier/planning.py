@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import logging
 import threading
 from collections.abc import Callable
 from dataclasses import dataclass
@@ -19,6 +20,8 @@ Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
 Bools = NDArray[np.bool_]
 
+_LOG = logging.getLogger(__name__)
+
 _WHOLE = 1e-6
 
 #: Share of the fractional departures that a step of a dive fixes.
@@ -32,8 +35,8 @@ _DIVE_STEPS = 300
 #: Separation rounds before a dive: what the LP does not know yet, the dive pays for.
 _DIVE_ROUNDS = 6
 
-#: Relaxations and dives between two restricted searches, where all are wanted.
-_STEPS_BETWEEN = 5
+#: Hub sets bounded between two restricted searches, where both are wanted.
+_RELAXED_BETWEEN = 6
 
 #: Hub sets whose plan is within this share of the best are searched around too.
 _NEAR = 0.01
@@ -256,9 +259,9 @@ class PlanSide:
         self.setting = setting
         self._lock = threading.Lock()
         self._rows: RowSet | None = None
-        self._asked: list[tuple[int, ...]] = []
+        self._asked: list[tuple[float, tuple[int, ...]]] = []
         self._known: dict[tuple[int, ...], HubSet] = {}
-        self._turns = 0
+        self._relaxed_since = 0
         self.wants_rows = True
 
     # -- news from the bound side ----------------------------------------------------------------------
@@ -269,47 +272,67 @@ class PlanSide:
         most = float(values[self.setting.of.hub].max(initial=0.0))
         for threshold in (0.5, 0.25, 0.75):
             hubs = likely_hubs(self.setting, values, threshold * most)
-            self._ask(tuple(np.flatnonzero(hubs).tolist()))
+            self._ask(tuple(np.flatnonzero(hubs).tolist()), -np.inf)
 
     def propose(self, bound: float, values: Floats) -> None:
         """Take note of a hub set that the tree found promising."""
         if bound < self.setting.target:
-            self._ask(tuple(np.flatnonzero(values[self.setting.of.hub] > 0.5).tolist()))
+            self._ask(tuple(np.flatnonzero(values[self.setting.of.hub] > 0.5).tolist()), bound)
 
-    def _ask(self, hubs: tuple[int, ...]) -> None:
+    def _ask(self, hubs: tuple[int, ...], hope: float) -> None:
+        """Have a hub set bounded; the smallest `hope` (scaled) comes first."""
         with self._lock:
-            if hubs not in self._known and hubs not in self._asked:
-                self._asked.append(hubs)
+            unknown = hubs not in self._known or np.isneginf(self._known[hubs].bound)
+            if unknown and all(other != hubs for _, other in self._asked):
+                self._asked.append((hope, hubs))
 
     # -- work ------------------------------------------------------------------------------------------
 
     def step(self) -> bool:
         """Do the most promising piece of work; whether there was one."""
-        setting = self.setting
         if self._rows is None:
             return False
-        self._turns += 1
         best = self._most_promising()
-        fresh = best is not None and self._known[best].round == 0
-        if best is not None and fresh and self._turns % (_STEPS_BETWEEN + 1) == 0:
+        hopeful = self._hopeful()
+        if hopeful is not None:
+            self._dive(hopeful)
+            return True
+        if best is not None and self._known[best].round == 0 and self._relaxed_since >= _RELAXED_BETWEEN:
+            self._relaxed_since = 0
             return self._search(best)
         with self._lock:
-            hubs = self._asked.pop(0) if self._asked else None
-        if hubs is not None:
-            self._relax(hubs)
-            if not any(known.dived and known.point is not None for known in self._known.values()):
-                # The first real plan comes before any further bound.
-                self._dive(hubs)
+            self._asked.sort(key=lambda entry: entry[0])
+            asked = self._asked.pop(0)[1] if self._asked else None
+        if asked is not None:
+            self._relaxed_since += 1
+            self._relax(asked)
             return True
-        waiting = [
-            (known.bound, hubs)
-            for hubs, known in self._known.items()
-            if not known.dived and known.bound < setting.target
-        ]
+        waiting = self._waiting()
         if waiting:
             self._dive(min(waiting)[1])
             return True
         return best is not None and self._search(best)
+
+    def _waiting(self) -> list[tuple[float, tuple[int, ...]]]:
+        """Return hub sets bounded but not dived into that may still beat the best plan."""
+        return [
+            (known.bound, hubs)
+            for hubs, known in self._known.items()
+            if not known.dived and known.bound < self.setting.target
+        ]
+
+    def _hopeful(self) -> tuple[int, ...] | None:
+        """Return the hub set whose dive should beat the best plan, judged by what dives have lost so far."""
+        waiting = self._waiting()
+        if not waiting:
+            return None
+        bound, hubs = min(waiting)
+        losses = [
+            k.value - k.bound for k in self._known.values() if k.lp is None and np.isfinite(k.value - k.bound)
+        ]
+        if losses and bound + min(losses) >= self.setting.cutoff:
+            return None
+        return hubs
 
     def _most_promising(self) -> tuple[int, ...] | None:
         """Return the hub set to search around: the one tried least whose plan is near the best."""
@@ -332,7 +355,8 @@ class PlanSide:
             return
         hubs = tuple(np.flatnonzero(np.round(point[self.setting.of.hub]) > 0).tolist())
         if hubs not in self._known:
-            self._relax(hubs)
+            assert self._rows is not None
+            self._known[hubs] = HubSet(-np.inf, self._rows, np.zeros(0), None, dived=True)
         known = self._known[hubs]
         if value < known.value - 1e-9 * abs(value):
             known.point, known.value, known.round = point, value, 0
@@ -350,11 +374,21 @@ class PlanSide:
         if end.status is not LpStatus.OPTIMAL:
             self._known[hubs] = HubSet(np.inf, self._rows, np.zeros(0), None, dived=True)
             return
-        best = min((known.bound for known in self._known.values()), default=np.inf)
-        self._known[hubs] = HubSet(lp.objective, lp.tight(), lp.values.copy(), lp)
+        best = min((k.bound for k in self._known.values() if np.isfinite(k.bound)), default=np.inf)
+        old = self._known.get(hubs)
+        _LOG.debug(
+            "hubs %s at %.1f s: bound %.6g",
+            hubs,
+            setting.control.elapsed_s(),
+            setting.objective.value_of(lp.objective),
+        )
+        known = HubSet(lp.objective, lp.tight(), lp.values.copy(), lp)
+        if old is not None:
+            known.point, known.value, known.round = old.point, old.value, old.round
+        self._known[hubs] = known
         if lp.objective < best:
             for other in self._neighbours(hubs):
-                self._ask(other)
+                self._ask(other, lp.objective)
         self._forget()
 
     def _forget(self) -> None:
@@ -383,6 +417,7 @@ class PlanSide:
         if known.lp is None:
             return
         values = dive(self.setting, known.lp)
+        _LOG.debug("dive %s ended at %.1f s: %s", hubs, self.setting.control.elapsed_s(), values is not None)
         known.lp = None
         if values is not None:
             self._offer(values)

@@ -111,6 +111,10 @@ class Restricted:
             scip.optimizeNogil()
         return self.scip._end(scip.getObjlimit())
 
+    def nodes(self) -> int:
+        """Return the nodes that SCIP has solved in all."""
+        return int(self.scip.scip.getNTotalNodes())
+
     def interrupt(self) -> None:
         """Have SCIP stop."""
         self.scip.interrupt()

@@ -189,9 +189,9 @@ class Setting:
         """Whether there is nothing left to do, or no time to do it."""
         return self.control.stop_requested() or self.bound >= self.target
 
-    def start_columns(self) -> Bools:
-        """Return the columns an LP starts with, shape (columns,)."""
-        active = self.upper > 0.0
+    def start_columns(self, upper: Floats | None = None) -> Bools:
+        """Return the columns that an LP within `upper` (None: the problem's own) starts with, a mask."""
+        active = (self.upper if upper is None else upper) > 0.0
         active[self.integer] = True
         flows = self.model.flows
         if int(active[self.of.flow].sum()) > ALL_COLUMNS:

@@ -20,7 +20,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.solve.carrier.bounding import Bounder, sub_lp
+from hubdesign.solve.carrier.bounding import INTERIOR_SIZE, Bounder, sub_lp
 from hubdesign.solve.carrier.planning import branching_priorities
 from hubdesign.solve.carrier.restricted import Restricted
 from hubdesign.solve.carrier.setting import RowSet, Setting, StepControl
@@ -35,11 +35,14 @@ _LOG = logging.getLogger(__name__)
 _WHOLE = 1e-6
 
 #: Separation rounds of a node and the relative gain below which they end, with hubs free and with hubs whole.
-_HUB_ROUNDS, _HUB_GAIN = 2, 5e-4
+_HUB_ROUNDS, _HUB_GAIN = 1, 5e-4
 _NODE_ROUNDS, _NODE_GAIN = 6, 1e-4
 
 #: SCIP nodes of a leaf's first slice; each further slice adds as many as all before.
 _SLICE = 500
+
+#: SCIP nodes of a slice at the least: a slice that does nothing would be asked for again for ever.
+_LEAST_NODES = 50
 
 #: A leaf is worked on until its bound passes the next node's by this share of its distance to the target.
 _LEVEL_MARGIN = 0.2
@@ -77,13 +80,14 @@ _LEAF_SETTINGS = {
 class Leaf:
     """A node with whole hubs and fleet: its bounds, the rows it was bounded with, its SCIP run.
 
-    A run pauses after `nodes` nodes in all, or once its bound passes `level`.
+    A run pauses after `nodes` nodes in all, or after `least` once its bound passes `level`.
     """
 
     lower: Floats
     upper: Floats
     rows: RowSet
     nodes: int = 0
+    least: int = 0
     level: float = np.inf
     model: Restricted | None = None
 
@@ -95,6 +99,7 @@ class Node:
     bound: float
     number: int
     fixings: dict[int, tuple[float, float]] = field(compare=False)
+    rows: RowSet | None = field(default=None, compare=False)
     bounder: Bounder | None = field(default=None, compare=False)
     leaf: Leaf | None = field(default=None, compare=False)
 
@@ -115,6 +120,7 @@ class Tree:
         after_node: Callable[[bool], None] | None = None,
     ) -> None:
         self.setting, self.bounder = setting, bounder
+        self.large = bounder.lp.row_count > INTERIOR_SIZE
         self.heap: list[Node] = [Node(bound, 0, {})]
         self.left = np.inf  # smallest bound of the nodes left as good enough
         self._rows: RowSet = bounder.lp.tight()
@@ -144,7 +150,7 @@ class Tree:
             if not self.heap:
                 return None
             if leaves_only:
-                leaves = [node for node in self.heap if node.leaf is not None and node.bound < target]
+                leaves = [node for node in self.heap if node.bound < target and self._may_help(node)]
                 if not leaves:
                     return None
                 node = min(leaves)
@@ -154,6 +160,10 @@ class Tree:
                 node = heapq.heappop(self.heap)
             self._in_work[node.number] = node.bound
             return node
+
+    def _may_help(self, node: Node) -> bool:
+        """Whether a second thread may work on a node: it must not share an LP."""
+        return node.leaf is not None or (self.large and node.bounder is None and bool(node.fixings))
 
     def _leave(self, node: Node) -> None:
         """Close a node whose bound stays as it is."""
@@ -196,11 +206,14 @@ class Tree:
         return self.finished
 
     def help(self) -> bool:
-        """Work on one leaf for a slice; whether there was one. May be called from a second thread."""
+        """Work on one leaf for a slice, or on a node with an LP of its own; whether there was one.
+
+        May be called from a second thread.
+        """
         node = self._take(leaves_only=True)
         if node is None:
             return False
-        self._done(node, self._leaf(node))
+        self._done(node, self._leaf(node) if node.leaf is not None else self._bound(node))
         return True
 
     def _bound(self, node: Node) -> bool:
@@ -208,7 +221,7 @@ class Tree:
         setting = self.setting
         bounder = self._bounder_of(node)
         bounder.fix(node.fixings)
-        rounds, gain = (_HUB_ROUNDS, _HUB_GAIN) if bounder is self.bounder else (_NODE_ROUNDS, _NODE_GAIN)
+        rounds, gain = (_HUB_ROUNDS, _HUB_GAIN) if node.bounder is None else (_NODE_ROUNDS, _NODE_GAIN)
         end = bounder.rounds(rounds, least_gain=gain, enough=lambda: setting.target)
         self.nodes += 1
         if end.status is LpStatus.INFEASIBLE:
@@ -235,18 +248,25 @@ class Tree:
         return False
 
     def _bounder_of(self, node: Node) -> Bounder:
-        """Return the LP of a node: the common one, or a smaller one of its own once all hubs are fixed."""
-        if node.bounder is None:
-            hubs = [
-                c for c in self.setting.of.hub.tolist() if self.bounder.lp.upper[c] > self.bounder.lp.lower[c]
-            ]
-            if not hubs or not all(c in node.fixings for c in hubs):
-                return self.bounder
-            lower, upper = self.bounder.lp.lower.copy(), self.bounder.lp.upper.copy()
-            for column in hubs:
+        """Return the LP of a node: the common one, or one of its own without what its hubs shut.
+
+        Large nodes are solved by interior point, which no basis helps: they always get their own.
+        """
+        if node.bounder is not None:
+            return node.bounder
+        lower, upper = self.setting.lower.copy(), self.setting.upper.copy()
+        hubs = [c for c in self.setting.of.hub.tolist() if upper[c] > lower[c]]
+        fixed = bool(hubs) and all(c in node.fixings for c in hubs)
+        if not fixed and not self.large:
+            return self.bounder
+        for column in hubs:
+            if column in node.fixings:
                 lower[column], upper[column] = node.fixings[column]
-            node.bounder = Bounder(self.setting, sub_lp(self.setting, self._rows, lower, upper))
-        return node.bounder
+        rows = self._rows if node.rows is None else node.rows
+        bounder = Bounder(self.setting, sub_lp(self.setting, rows, lower, upper))
+        if fixed:
+            node.bounder = bounder
+        return bounder
 
     def _hub_or_fleet(self, node: Node, values: Floats) -> int | None:
         """Return the most fractional hub, else the fleet count that weighs most, None where all are whole."""
@@ -269,15 +289,16 @@ class Tree:
         low, high = bounder.lower[column], bounder.upper[column]
         value = min(max(value, low), high)
         down, up = np.floor(value), np.floor(value) + 1.0
-        if bounder is self.bounder:
-            self._rows = bounder.lp.tight()
+        rows = None if node.bounder is not None else bounder.lp.tight()
+        if rows is not None and not self.large:
+            self._rows = rows
         with self._lock:
             for bounds in ((float(low), float(down)), (float(up), float(high))):
                 if bounds[0] <= bounds[1]:
                     self.count += 1
                     heapq.heappush(
                         self.heap,
-                        Node(node.bound, self.count, {**node.fixings, column: bounds}, node.bounder),
+                        Node(node.bound, self.count, {**node.fixings, column: bounds}, rows, node.bounder),
                     )
 
     # -- leaves ----------------------------------------------------------------------------------------
@@ -298,7 +319,8 @@ class Tree:
         setting, leaf = self.setting, node.leaf
         assert leaf is not None
         limit = setting.target
-        leaf.nodes = max(_SLICE, 2 * leaf.nodes)
+        done = leaf.model.nodes() if leaf.model is not None else 0
+        leaf.least, leaf.nodes = done + _LEAST_NODES, done + max(_SLICE, done)
         leaf.level = self._level(node)
         end = self._slice(leaf, limit)
         proven = min(end.bound, limit)
@@ -323,7 +345,9 @@ class Tree:
                 bound for number, bound in self._in_work.items() if number != node.number
             ]
         target = self.setting.target
-        margin = _LEVEL_MARGIN * (target - node.bound) if np.isfinite(target) else 0.0
+        if not np.isfinite(target):
+            return np.inf
+        margin = _LEVEL_MARGIN * (target - node.bound)
         return max(min(others, default=np.inf), node.bound) + margin
 
     def _slice(self, leaf: Leaf, limit: float) -> MipEnd:
@@ -339,7 +363,7 @@ class Tree:
             setting.offer(point)
 
         def check(bound: float) -> None:
-            if bound >= leaf.level:
+            if bound >= leaf.level and model.nodes() >= leaf.least:
                 model.interrupt()
 
         return leaf.model.run(
