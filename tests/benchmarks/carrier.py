@@ -1,8 +1,8 @@
 """Measure carrier networks: python -m tests.benchmarks.carrier [--cases 20 50 ...] [--rivals] [--out FILE].
 
 Cases are made by the bench folder's carrier.py (HUBDESIGN_BENCH, else ../shared/bench): weekly, low
-frequency (scale 0.25) and serving all, each solved in a process of its own. `--rivals` hands the model without
-pool rows and cuts (links open by frequency, x <= h summed) to SCIP and HiGHS with their defaults, same limit.
+frequency (scale 0.25) and serving all, each solved in a process of its own. `--rivals` hands the model
+without pool rows and cuts (links open by frequency, x <= h summed) to SCIP and HiGHS with their defaults.
 `--growth` measures n = 10, 20, 40, 80, 160. Writes a markdown table.
 """
 
