@@ -93,7 +93,8 @@ def land_path(frame: Frame) -> str:
         shape = _projected(frame, outer, disc)
         for hole in holes:
             shape = shape.difference(_projected(frame, hole, disc))
-        pieces.append(make_valid(shape).intersection(view))
+        # A hair wider, so that parts cut at the antimeridian grow together.
+        pieces.append(make_valid(shape).intersection(view).buffer(0.1))
     whole = unary_union(pieces).simplify(0.35)
     parts = whole.geoms if isinstance(whole, MultiPolygon) else [whole]
     polygons = [part for part in parts if isinstance(part, Polygon) and not part.is_empty and part.area > 1.0]

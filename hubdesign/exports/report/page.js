@@ -155,7 +155,7 @@ const fill = (element, keeping) => {
   title.append(...titleOf(from).map(isolated));
   const list = make("dl");
   for (const [name, value, unit, key] of figures(from.rows, from.row, from.group)) {
-    if (TOLD.has(key)) continue;
+    if (TOLD.has(key) || (key.startsWith("frequency_") && number(value) === 0)) continue;
     const term = make("dt", name, {"data-k": key}), told = make("dd");
     if (unit) term.append(" ", make("span", unit, {class: "u"}));
     told.append(isolated(value));
@@ -168,7 +168,7 @@ const fill = (element, keeping) => {
   if (!keeping) return;
   const button = make("button", "Let go", {type: "button", class: "drop", title: "Esc"});
   button.addEventListener("click", release);
-  card.append(button);
+  card.prepend(button);
 };
 const idle = card && card.firstElementChild.cloneNode(true);
 const release = () => {
