@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 from itertools import combinations
 
 from hubdesign import run
-from hubdesign.design import Design, Progress, Status, is_proven
+from hubdesign.answer import Design, Progress, Status, is_proven
 from hubdesign.errors import InfeasibleError, NoPlanError, UnsolvedError
 from hubdesign.problem import Problem, Structure
 from hubdesign.run import Result

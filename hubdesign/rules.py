@@ -10,7 +10,7 @@ from collections.abc import Callable, Iterator
 
 import numpy as np
 
-from hubdesign.design import Design, Flow
+from hubdesign.answer import Design, Flow
 from hubdesign.network import Network
 from hubdesign.pricing import Bill
 from hubdesign.problem import UNLIMITED

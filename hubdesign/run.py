@@ -10,7 +10,7 @@ import time
 from collections.abc import Callable
 from dataclasses import dataclass
 
-from hubdesign.design import Design, Progress, Status, relative_gap
+from hubdesign.answer import Design, Progress, Status, relative_gap
 from hubdesign.diagnose import diagnose
 from hubdesign.errors import InfeasibleError, NoPlanError, VerificationError
 from hubdesign.network import Network, build_network
@@ -18,7 +18,7 @@ from hubdesign.pricing import Bill
 from hubdesign.problem import Problem, Settings
 from hubdesign.solve.control import Control
 from hubdesign.solve.dispatch import solve
-from hubdesign.verify import verify
+from hubdesign.verification import verify
 
 #: Wall time given to finding out why nothing is feasible, s.
 _DIAGNOSIS_S = 20.0
@@ -98,7 +98,7 @@ def design(
     control
         Limits and cancelling; by default what the settings ask for.
     listener
-        Called with each :class:`~hubdesign.design.Progress`; ignored where `control` is given.
+        Called with each :class:`~hubdesign.answer.Progress`; ignored where `control` is given.
     starts
         Plans on the same candidates to start from.
 

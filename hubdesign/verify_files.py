@@ -14,8 +14,8 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from hubdesign.answer import Design, Flow, Frequency, Status
 from hubdesign.cells import plain_text
-from hubdesign.design import Design, Flow, Frequency, Status
 from hubdesign.errors import OutputError
 from hubdesign.exports.folder import changed_files, read_manifest, repair
 from hubdesign.exports.write import input_copy
@@ -24,7 +24,7 @@ from hubdesign.network import Network, build_network
 from hubdesign.problem import UNLIMITED, Problem
 from hubdesign.results import Results, Table, build_results
 from hubdesign.units import COST_TOLERANCE
-from hubdesign.verify import verify
+from hubdesign.verification import verify
 
 #: Figures that tell about the run, not about the plan.
 _NOT_RECOMPUTED = ("progress",)

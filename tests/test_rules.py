@@ -7,10 +7,10 @@ from typing import Any
 
 import pytest
 
-from hubdesign.design import Design, Flow, Frequency, Status
+from hubdesign.answer import Design, Flow, Frequency, Status
 from hubdesign.network import Network, build_network
 from hubdesign.problem import Demand, ListedLink, Problem, Settings, Station, Vehicle
-from hubdesign.verify import verify
+from hubdesign.verification import verify
 
 LINKS = (
     ListedLink("A", "B", distance_km=100.0),

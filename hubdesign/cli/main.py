@@ -263,6 +263,6 @@ def _read(inputs: Path) -> tuple[Any, float]:
 
 
 def _exit_code(result: Any) -> int:
-    from hubdesign.design import Status
+    from hubdesign.answer import Status
 
     return errors.EXIT_PROVEN if result.design.status is Status.PROVEN else errors.EXIT_LIMIT_WITH_DESIGN

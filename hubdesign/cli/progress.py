@@ -8,8 +8,8 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from typing import Any
 
+from hubdesign.answer import Progress
 from hubdesign.cli.words import amount, percent
-from hubdesign.design import Progress
 
 #: Plain lines come at most this often, s; a first plan is told at once.
 _EVERY_S = 1.0

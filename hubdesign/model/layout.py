@@ -9,7 +9,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.design import Flow
+from hubdesign.answer import Flow
 from hubdesign.model.flows import FlowColumns
 from hubdesign.model.program import Family, Program
 from hubdesign.network import Network

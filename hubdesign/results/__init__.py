@@ -9,7 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Any
 
-from hubdesign.design import Design
+from hubdesign.answer import Design
 from hubdesign.network import Network
 from hubdesign.pricing import Bill
 from hubdesign.results.operation import (

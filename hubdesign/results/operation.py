@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from hubdesign import costs
-from hubdesign.design import Design
+from hubdesign.answer import Design
 from hubdesign.network import Network
 from hubdesign.pricing import Bill
 from hubdesign.results.table import Column, Table, build_table

@@ -6,7 +6,7 @@ from typing import Any
 
 import numpy as np
 
-from hubdesign.design import Design, relative_gap
+from hubdesign.answer import Design, relative_gap
 from hubdesign.network import Network
 from hubdesign.pricing import Bill
 from hubdesign.problem import UNLIMITED, Settings

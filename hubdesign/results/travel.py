@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.design import Design
+from hubdesign.answer import Design
 from hubdesign.network import Network
 from hubdesign.pricing import leg_entries, leg_factors
 

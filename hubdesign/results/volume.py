@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from hubdesign import costs
-from hubdesign.design import Design
+from hubdesign.answer import Design
 from hubdesign.itineraries import enumerate_itineraries
 from hubdesign.network import DemandArrays, Network
 from hubdesign.problem import UNLIMITED

@@ -7,7 +7,7 @@ import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 
-from hubdesign.design import Progress
+from hubdesign.answer import Progress
 
 
 class Control:

@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy import sparse
 
-from hubdesign.design import Design, Status
+from hubdesign.answer import Design, Status
 from hubdesign.model.build import build_model
 from hubdesign.model.layout import Model
 from hubdesign.model.objective import Objective, build_objective, goal_phases

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from hubdesign.design import Design
+from hubdesign.answer import Design
 from hubdesign.network import Network, build_network
 from hubdesign.problem import Problem
 from hubdesign.solve.control import Control

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.design import Design, Frequency, Status, is_proven, relative_gap, round_bound_outward
+from hubdesign.answer import Design, Frequency, Status, is_proven, relative_gap, round_bound_outward
 from hubdesign.model.layout import Model
 from hubdesign.model.objective import Objective
 from hubdesign.model.variables import vehicles_for

@@ -11,8 +11,8 @@ import pytest
 from click.testing import CliRunner, Result
 
 from hubdesign import errors
+from hubdesign.answer import Design, Status
 from hubdesign.cli import main
-from hubdesign.design import Design, Status
 from hubdesign.inputs import new_case
 from hubdesign.solve.dispatch import solve
 

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 import pytest
 
+from hubdesign.answer import Progress
 from hubdesign.cli.progress import gap_line
 from hubdesign.cli.words import amount, percent
-from hubdesign.design import Progress
 
 
 @pytest.mark.parametrize(

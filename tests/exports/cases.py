@@ -6,8 +6,8 @@ from dataclasses import replace
 from functools import cache
 from pathlib import Path
 
+from hubdesign.answer import Design, Flow, Status
 from hubdesign.comparison import Comparison, Entry
-from hubdesign.design import Design, Flow, Status
 from hubdesign.exports.write import InputFiles
 from hubdesign.network import build_network
 from hubdesign.pricing import price

@@ -10,7 +10,7 @@ from typing import Any
 import jsonschema
 import pytest
 
-from hubdesign.design import Status
+from hubdesign.answer import Status
 from hubdesign.exports.summary import (
     Seconds,
     comparison_seconds,

@@ -14,8 +14,8 @@ from typing import Any
 import pytest
 
 from hubdesign import run
+from hubdesign.answer import Design, Status
 from hubdesign.comparison import Comparison
-from hubdesign.design import Design, Status
 from hubdesign.errors import OutputError
 from hubdesign.exports.folder import changed_files, claim_target, read_manifest
 from hubdesign.exports.gis import FORMATS, export_gis

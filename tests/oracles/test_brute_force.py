@@ -4,11 +4,11 @@ from __future__ import annotations
 
 import pytest
 
-from hubdesign.design import Status
+from hubdesign.answer import Status
 from hubdesign.network import build_network
 from hubdesign.solve.control import Control
 from hubdesign.solve.dispatch import solve
-from hubdesign.verify import verify
+from hubdesign.verification import verify
 from tests.oracles.enumeration import MOST_DEPARTURES, BruteForce
 from tests.oracles.tiny import tiny_case
 

@@ -7,7 +7,7 @@ import random
 import networkx as nx
 import pytest
 
-from hubdesign.design import Status
+from hubdesign.answer import Status
 from hubdesign.problem import Demand, ListedLink, Problem, Settings, Station
 from hubdesign.run import design
 

@@ -6,7 +6,7 @@ import dataclasses
 
 import pytest
 
-from hubdesign.design import Design, Status
+from hubdesign.answer import Design, Status
 from hubdesign.network import build_network
 from hubdesign.problem import Demand, ListedLink, Problem, Station, Vehicle
 from hubdesign.solve.control import Control

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import random
 
-from hubdesign.design import Design, Flow, Frequency, Progress, Status
+from hubdesign.answer import Design, Flow, Frequency, Progress, Status
 from hubdesign.network import Network, build_network
 from hubdesign.pricing import Bill, price
 from hubdesign.problem import Demand, ListedLink, Problem, Settings, Station, Vehicle

@@ -8,7 +8,7 @@ from itertools import pairwise
 import numpy as np
 import pytest
 
-from hubdesign.design import Design, Flow, Status
+from hubdesign.answer import Design, Flow, Status
 from hubdesign.network import build_network
 from hubdesign.pricing import price
 from hubdesign.problem import UNLIMITED, Demand, ListedLink, Problem, Settings, Station

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from hubdesign.design import Progress
+from hubdesign.answer import Progress
 from hubdesign.solve.control import Control
 
 

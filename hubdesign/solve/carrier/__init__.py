@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from hubdesign.design import Design
+from hubdesign.answer import Design
 from hubdesign.network import Network
 from hubdesign.problem import UNLIMITED, Problem
 from hubdesign.solve.control import Control

@@ -8,7 +8,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from hubdesign.design import Design, Status
+from hubdesign.answer import Design, Status
 from hubdesign.model.build import build_model
 from hubdesign.model.layout import Model
 from hubdesign.model.objective import build_objective, goal_phases

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from hubdesign.design import Design, Flow, Status, is_proven, relative_gap, round_bound_outward
+from hubdesign.answer import Design, Flow, Status, is_proven, relative_gap, round_bound_outward
 from hubdesign.network import Network
 from hubdesign.pricing import price
 from hubdesign.problem import UNLIMITED

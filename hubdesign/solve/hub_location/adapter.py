@@ -13,7 +13,7 @@ from itertools import pairwise
 
 import numpy as np
 
-from hubdesign.design import Design, Flow, Status, is_proven, relative_gap
+from hubdesign.answer import Design, Flow, Status, is_proven, relative_gap
 from hubdesign.network import Network
 from hubdesign.pricing import price
 from hubdesign.problem import UNLIMITED

@@ -7,7 +7,7 @@ import math
 import random
 from functools import cache
 
-from hubdesign.design import Design, Flow, Frequency, Progress, Status
+from hubdesign.answer import Design, Flow, Frequency, Progress, Status
 from hubdesign.network import build_network
 from hubdesign.pricing import price
 from hubdesign.problem import Demand, Problem, Settings, Station

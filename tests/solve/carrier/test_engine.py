@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import pytest
 
-from hubdesign.design import Status
+from hubdesign.answer import Status
 from hubdesign.network import build_network
 from hubdesign.solve import carrier
 from hubdesign.solve.control import Control
 from hubdesign.solve.direct import solve_direct
-from hubdesign.verify import verify
+from hubdesign.verification import verify
 from tests.solve.carrier.cases import random_carrier
 
 

@@ -6,7 +6,7 @@ from pathlib import Path
 
 import pytest
 
-from hubdesign.design import Status
+from hubdesign.answer import Status
 from hubdesign.inputs import read_case
 from hubdesign.run import design
 from tests.benchmarks.convert import bench_folder, convert_canad

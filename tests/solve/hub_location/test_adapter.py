@@ -7,7 +7,7 @@ import dataclasses
 import numpy as np
 import pytest
 
-from hubdesign.design import Status
+from hubdesign.answer import Status
 from hubdesign.network import build_network
 from hubdesign.pricing import price
 from hubdesign.problem import Demand, ListedLink, Problem, Settings, Station, Vehicle

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from hubdesign.design import Design, Status, is_proven, relative_gap
+from hubdesign.answer import Design, Status, is_proven, relative_gap
 from hubdesign.network import Network, build_network
 from hubdesign.pricing import Bill, price
 from hubdesign.problem import Problem
