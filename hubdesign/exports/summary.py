@@ -29,7 +29,7 @@ from hubdesign.results import (
 )
 from hubdesign.run import Result, available_cores
 
-_LIBRARIES = ("geographiclib", "highspy", "networkx", "numpy", "pandas", "PySCIPOpt", "scipy")
+_LIBRARIES = ("geographiclib", "highspy", "numpy", "PySCIPOpt", "scipy")
 
 
 @dataclass(frozen=True, slots=True)
