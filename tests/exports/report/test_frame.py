@@ -24,6 +24,7 @@ LAND = {
     "Greenland": (73.0, -40.0),
     "Antarctica": (-82.0, 60.0),
     "Chukotka": (67.0, 178.0),
+    "Viti Levu": (-17.8, 178.0),
 }
 SEA = {
     "Pacific": (0.0, -140.0),
@@ -32,6 +33,7 @@ SEA = {
     "Indian Ocean": (-20.0, 80.0),
     "Arctic Ocean": (86.0, 0.0),
     "Southern Ocean": (-60.0, -150.0),
+    "Tonga Trench": (-19.0, -173.0),
     "Between Fiji and Samoa": (-17.0, -177.0),
 }
 NETWORKS = {
