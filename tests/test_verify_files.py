@@ -115,7 +115,7 @@ def test_a_changed_total_and_cost_are_named(copy: Path) -> None:
 
 
 def test_an_itinerary_that_is_no_candidate_is_told_without_a_traceback(copy: Path) -> None:
-    set_cell(copy / "itineraries.csv", "stations", "BRK XXX")
+    set_cell(copy / "itineraries.csv", "stations", "BRK QQQ")
     list_anew(copy)
     assert any("do not fit the inputs" in breach for breach in verify_folder(copy).breaches)
 

@@ -241,7 +241,10 @@ class PathRelaxation:
         """Solve the LP as it stands; whether it ended optimal."""
         self.highs.run()
         if self.highs.getModelStatus() != self.kinds.kOptimal:
-            return False
+            self.highs.clearSolver()  # the trouble may lie in the basis: once more without it
+            self.highs.run()
+            if self.highs.getModelStatus() != self.kinds.kOptimal:
+                return False
         solution = self.highs.getSolution()
         values = np.asarray(solution.col_value, dtype=np.float64)
         self.y = values[: self.links]

@@ -136,15 +136,19 @@ class LinkTree:
         if bound >= self._cutoff:
             self._cut_off = min(self._cut_off, bound)
             return
-        if not whole:
+        if not whole and self.control.stop_requested():
             self._push(_Node(bound, node.number, node.lower, node.upper))
             return
-        lower, upper = self._fix(node, bound)
-        link = self._choose(lower, upper)
-        if link is None:
-            link = self._leaf(lower, upper, bound)
+        if whole:
+            lower, upper = self._fix(node, bound)
+            link = self._choose(lower, upper)
             if link is None:
-                return
+                link = self._leaf(lower, upper, bound)
+        else:
+            lower, upper = node.lower, node.upper
+            link = self._blind(node, bound)
+        if link is None:
+            return
         part = float(np.clip(lp.y[link], 0.05, 0.95))
         for up in (True, False) if part < 0.3 and self.plunge else (False, True):
             self._count += 1
@@ -152,6 +156,17 @@ class LinkTree:
             (low if up else high)[link] = 1 if up else 0
             child = _Node(bound, self._count, low, high, link, up, 1.0 - part if up else part)
             self._push(child)
+
+    def _blind(self, node: _Node, bound: float) -> int | None:
+        """Return a link to split a node on whose LP could not be solved; None where every link is decided.
+
+        Such a node keeps the bound it has; taking it up again as it is would never end.
+        """
+        free = np.flatnonzero(node.lower < node.upper)
+        if not len(free):
+            self._cut_off = min(self._cut_off, bound)
+            return None
+        return int(free[np.argmax(self.lp.form.fixed[free])])
 
     def _leaf(self, lower: Bytes, upper: Bytes, bound: float) -> int | None:
         """Take the plan of a node whose links are whole; return a link to split on where it is not closed."""

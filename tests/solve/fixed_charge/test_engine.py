@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pytest
 
@@ -138,3 +140,32 @@ def test_scaling_all_money_or_all_volume_changes_no_plan(scale: float) -> None:
     assert solve_fixed_charge(bulk, Control(60.0, gap=0.0)).objective == pytest.approx(
         plain.objective, rel=1e-6
     )
+
+
+def test_a_node_whose_lp_cannot_be_solved_is_split_and_never_taken_up_forever(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """Every node with the first link shut fails; the search must still end by itself with a true bound."""
+    solve_lp, failed, decided = PathRelaxation.solve, 0, 0
+
+    def solve(self: PathRelaxation, *arguments: Any, **named: Any) -> bool:
+        nonlocal failed
+        if self.upper[0] == 0.0 and self.lower[1:].sum() < 3.0:
+            failed += 1
+            self.bound = -np.inf
+            return False
+        return solve_lp(self, *arguments, **named)
+
+    monkeypatch.setattr(PathRelaxation, "solve", solve)
+    for seed in range(400, 440):
+        inst = random_instance(seed)
+        best = optimum_by_milp(inst)
+        if np.isinf(best):
+            continue
+        control = Control(20.0, gap=0.0)
+        answer = solve_fixed_charge(inst, control)
+        assert not control.stop_requested(), seed
+        assert answer.bound <= best * (1 + 1e-9) + 1e-9, seed
+        decided += 1
+    assert failed > 10
+    assert decided > 10
