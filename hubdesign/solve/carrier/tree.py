@@ -228,6 +228,11 @@ class Tree:
             return False
         node.bound = max(node.bound, end.bound)
         if end.status is not LpStatus.OPTIMAL:
+            if not (setting.control.stop_requested() or setting.done.is_set()):
+                # No limit but trouble in the LP: taken up again it would only fail again, so SCIP gets it.
+                rows = self._rows if node.rows is None else node.rows
+                node.leaf = Leaf(bounder.lower.copy(), bounder.upper.copy(), rows)
+                node.bounder = None
             return True
         values = bounder.lp.values
         _LOG.debug(

@@ -2,13 +2,18 @@
 
 from __future__ import annotations
 
+from typing import Any
+
+import numpy as np
 import pytest
 
 from hubdesign.answer import Status
 from hubdesign.network import build_network
 from hubdesign.solve import carrier
+from hubdesign.solve.carrier.bounding import Bounder, NodeEnd
 from hubdesign.solve.control import Control
 from hubdesign.solve.direct import solve_direct
+from hubdesign.solve.relaxation import LpStatus
 from hubdesign.verification import verify
 from tests.solve.carrier.cases import random_carrier
 
@@ -76,3 +81,38 @@ def test_fits_fleets_with_listed_itineraries_only() -> None:
     assert not carrier.fits(problem.with_settings(max_transfers=-1))
     assert not carrier.fits(problem.with_settings(allocation="single", max_transfers=2))
     assert not carrier.fits(problem.with_settings(structure="current"))
+
+
+def test_a_node_whose_lp_cannot_be_solved_goes_to_scip_and_is_never_taken_up_forever(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """Every LP in which a free hub is fixed fails; the optimum must still be proven before the limit."""
+    rounds, failed, proven = Bounder.rounds, 0, 0
+
+    def failing(self: Bounder, *arguments: Any, **named: Any) -> NodeEnd:
+        nonlocal failed
+        hub, program = self.setting.of.hub, self.setting.program
+        free = program.upper[hub] > program.lower[hub]
+        if (self.lower[hub] == self.upper[hub])[free].any():
+            failed += 1
+            return NodeEnd(LpStatus.LIMIT, -np.inf)
+        return rounds(self, *arguments, **named)
+
+    monkeypatch.setattr(Bounder, "rounds", failing)
+    for seed in range(12):
+        problem = random_carrier(seed)
+        network = build_network(problem)
+        maximise = problem.settings.goal != "least-cost"
+        control = Control(20.0, gap=0.0, maximise=maximise)
+        answer = carrier.solve(problem, network, control)
+        plain = solve_direct(network, Control(20.0, gap=0.0, maximise=maximise))
+        assert answer.status is plain.status, seed
+        assert not control.stop_requested(), seed
+        if plain.objective is not None:
+            size = verify(problem, plain, network).bill.total_cost
+            assert answer.objective == pytest.approx(plain.objective, rel=1e-6, abs=1e-6 * max(1.0, size)), (
+                seed
+            )
+            proven += 1
+    assert failed > 0
+    assert proven > 3
