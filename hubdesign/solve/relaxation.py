@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 from hubdesign.model.program import Program
-from hubdesign.solve.highs import new_highs
+from hubdesign.solve.highs import build_lp, finite, new_highs
 
 Floats = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -52,33 +52,16 @@ class Relaxation:
         self._pool_lower, self._pool_upper = program.pool.lower, program.pool.upper
         self.pool_in = np.zeros(program.pool.count, dtype=bool)
         self._highspy: Any = highspy
-        self._infinity: float = self._highspy.kHighsInf
         self.highs = new_highs(threads=threads, seed=seed)
-        self.highs.passModel(self._lp(coefficients))
+        rows = program.rows
+        matrix = rows.matrix(program.column_count)
+        columns = (program.lower, program.upper)
+        self.highs.passModel(build_lp(matrix, coefficients, columns, (rows.lower, rows.upper)))
         self.values: Floats = np.zeros(program.column_count)
         self.objective = -np.inf
         self._coefficients = coefficients
         self._bounds = [program.lower, program.upper]
-        self._blocks = [(program.rows.matrix(program.column_count), program.rows.lower, program.rows.upper)]
-
-    def _lp(self, coefficients: Floats) -> Any:
-        lp = self._highspy.HighsLp()
-        matrix = self.program.rows.matrix(self.program.column_count)
-        lp.num_col_, lp.num_row_ = self.program.column_count, self.program.rows.count
-        lp.col_cost_ = coefficients
-        lp.col_lower_, lp.col_upper_ = self.program.lower, self._finite(self.program.upper)
-        lp.row_lower_, lp.row_upper_ = (
-            self._finite(self.program.rows.lower),
-            self._finite(self.program.rows.upper),
-        )
-        lp.a_matrix_.format_ = self._highspy.MatrixFormat.kRowwise
-        lp.a_matrix_.start_ = matrix.indptr.astype(np.int32)
-        lp.a_matrix_.index_ = matrix.indices.astype(np.int32)
-        lp.a_matrix_.value_ = matrix.data
-        return lp
-
-    def _finite(self, values: Floats) -> Floats:
-        return np.clip(values, -self._infinity, self._infinity)
+        self._blocks = [(matrix, rows.lower, rows.upper)]
 
     def solve(self, time_limit_s: float | None = None) -> LpStatus:
         """Solve warm and keep `values` and `objective` of an optimal end.
@@ -129,8 +112,8 @@ class Relaxation:
             return
         self.highs.addRows(
             matrix.shape[0],
-            self._finite(np.asarray(lower, dtype=np.float64)),
-            self._finite(np.asarray(upper, dtype=np.float64)),
+            finite(np.asarray(lower, dtype=np.float64)),
+            finite(np.asarray(upper, dtype=np.float64)),
             matrix.nnz,
             matrix.indptr[:-1].astype(np.int32),
             matrix.indices.astype(np.int32),
@@ -146,7 +129,7 @@ class Relaxation:
                 len(columns),
                 np.asarray(columns, dtype=np.int32),
                 np.asarray(lower, dtype=np.float64),
-                self._finite(np.asarray(upper, dtype=np.float64)),
+                finite(np.asarray(upper, dtype=np.float64)),
             )
 
     def safe_bound(self) -> float:

@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from scipy import sparse
 
 from hubdesign.model.program import Program
-from hubdesign.solve.highs import new_highs
+from hubdesign.solve.highs import build_lp, finite, new_highs
 from hubdesign.solve.relaxation import LpStatus
 
 Floats = NDArray[np.float64]
@@ -73,7 +73,6 @@ class LinearModel:
         import highspy
 
         self._highspy: Any = highspy
-        self._infinity: float = self._highspy.kHighsInf
         self.program = program
         self.coefficients = coefficients
         self.lower, self.upper = lower, upper
@@ -103,27 +102,14 @@ class LinearModel:
         self._added_upper = np.zeros(0)
         self._idle = np.zeros(0, dtype=np.int64)
         self.highs = new_highs(seed=self.seed)
-        self.highs.passModel(self._first_lp())
+        columns = (self.lower[self.columns], self.upper[self.columns])
+        base = sparse.csr_array(self.base[:, self.columns])
+        rows = (self.base_lower, self.base_upper)
+        self.highs.passModel(build_lp(base, self.coefficients[self.columns], columns, rows))
         self.values: Floats = np.zeros(self.program.column_count)
         self.objective = -np.inf
         self.solved = False
         self._duals: Floats = np.zeros(len(self.base_lower))
-
-    def _first_lp(self) -> Any:
-        lp = self._highspy.HighsLp()
-        matrix = sparse.csr_array(self.base[:, self.columns])
-        lp.num_col_, lp.num_row_ = len(self.columns), matrix.shape[0]
-        lp.col_cost_ = self.coefficients[self.columns]
-        lp.col_lower_, lp.col_upper_ = self.lower[self.columns], self._finite(self.upper[self.columns])
-        lp.row_lower_, lp.row_upper_ = self._finite(self.base_lower), self._finite(self.base_upper)
-        lp.a_matrix_.format_ = self._highspy.MatrixFormat.kRowwise
-        lp.a_matrix_.start_ = matrix.indptr.astype(np.int32)
-        lp.a_matrix_.index_ = matrix.indices.astype(np.int32)
-        lp.a_matrix_.value_ = matrix.data
-        return lp
-
-    def _finite(self, values: Floats) -> Floats:
-        return np.clip(values, -self._infinity, self._infinity)
 
     # -- rows and columns ------------------------------------------------------------------------------
 
@@ -161,8 +147,8 @@ class LinearModel:
         inside = sparse.csr_array(matrix[:, self.columns])
         self.highs.addRows(
             matrix.shape[0],
-            self._finite(lower),
-            self._finite(upper),
+            finite(lower),
+            finite(upper),
             inside.nnz,
             inside.indptr[:-1].astype(np.int32),
             inside.indices.astype(np.int32),
@@ -200,7 +186,7 @@ class LinearModel:
             len(new),
             self.coefficients[new],
             self.lower[new],
-            self._finite(self.upper[new]),
+            finite(self.upper[new]),
             part.nnz,
             part.indptr[:-1].astype(np.int32),
             part.indices.astype(np.int32),
@@ -242,7 +228,7 @@ class LinearModel:
                 len(columns),
                 place.astype(np.int32),
                 np.asarray(lower, dtype=np.float64),
-                self._finite(np.asarray(upper, dtype=np.float64)),
+                finite(np.asarray(upper, dtype=np.float64)),
             )
 
     # -- solving ---------------------------------------------------------------------------------------
