@@ -20,7 +20,7 @@ from hubdesign.solve.control import Control
 from hubdesign.solve.hub_location.evaluate import multiple_unit_costs, total_cost
 from hubdesign.solve.hub_location.instance import Floats, HubAnswer, HubInstance, HubStatus, Ints
 from hubdesign.solve.hub_location.relaxation import Relaxation, build_relaxation
-from hubdesign.solve.hub_location.root import Root
+from hubdesign.solve.hub_location.root import Incumbent, Root
 from hubdesign.solve.hub_location.search import greedy, improve
 from hubdesign.solve.hub_location.tree import search_tree
 
@@ -98,7 +98,7 @@ def solve_multiple(
     bound = root.run()
     if not root.finished:
         bound = search_tree(root, incumbent, control, bound)
-    return _answer(incumbent, relaxation, bound, control)
+    return conclude(incumbent, incumbent.hubs, None, bound, TOLERANCE, control)
 
 
 def first_plans(relaxation: Relaxation, control: Control) -> tuple[Relaxation, list[list[int]], Floats]:
@@ -129,21 +129,25 @@ def _idle_answer(instance: HubInstance, relaxation: Relaxation) -> HubAnswer:
     return HubAnswer(hubs, None, total, total, HubStatus.PROVEN)
 
 
-def _answer(
-    incumbent: MultipleIncumbent, relaxation: Relaxation, bound: float, control: Control
+def conclude(
+    incumbent: Incumbent,
+    hubs: tuple[int, ...],
+    allocation: Ints | None,
+    bound: float,
+    tolerance: float,
+    control: Control,
 ) -> HubAnswer:
-    """Return the answer in money; the bound never above the plan."""
-    if not incumbent.hubs:
+    """Return the answer in money; the bound never above the plan. No hubs: no plan was found."""
+    if not hubs:
         done = bound == np.inf
         status = HubStatus.INFEASIBLE if done else HubStatus.UNKNOWN
-        money = np.inf if done else (bound + relaxation.constant) / relaxation.scale
+        money = np.inf if done else (bound + incumbent.shift) / incumbent.scale
         return HubAnswer((), None, np.inf, money, status)
     cutoff = incumbent.cutoff()
     # hubs and nodes were given up at the cutoff, so nothing above it is proven; the rest is for rounding
-    proven = bound >= cutoff
-    low = min(bound, cutoff) - 0.1 * TOLERANCE * abs(incumbent.cost + incumbent.shift)
+    low = min(bound, cutoff) - 0.1 * tolerance * abs(incumbent.cost + incumbent.shift)
     objective = (incumbent.cost + incumbent.shift) / incumbent.scale
-    status = HubStatus.PROVEN if proven else HubStatus.FEASIBLE
+    status = HubStatus.PROVEN if bound >= cutoff else HubStatus.FEASIBLE
     money = (low + incumbent.shift) / incumbent.scale
     control.report(best=objective, bound=money)
-    return HubAnswer(incumbent.hubs, None, objective, money, status)
+    return HubAnswer(hubs, allocation, objective, money, status)

@@ -22,9 +22,11 @@ LEAST_SHARE = 0.06
 
 
 class Incumbent(Protocol):
-    """Where plans are priced and the best is kept."""
+    """Where plans are priced and the best is kept; `cost` is ``money * scale - shift``."""
 
     cost: float
+    scale: float
+    shift: float
 
     def offer(self, stations: Ints) -> float:
         """Price a hub set truly and keep it if it is the best; return its cost."""

@@ -23,7 +23,7 @@ from hubdesign.solve.hub_location.covers import fewest_hubs, find_covers
 from hubdesign.solve.hub_location.evaluate import single_unit_costs, total_cost
 from hubdesign.solve.hub_location.instance import Bools, Floats, HubAnswer, HubInstance, HubStatus, Ints
 from hubdesign.solve.hub_location.master import Domain
-from hubdesign.solve.hub_location.multiple import first_plans, is_allowed
+from hubdesign.solve.hub_location.multiple import conclude, first_plans, is_allowed
 from hubdesign.solve.hub_location.pairing import Pairs, pair_cuts
 from hubdesign.solve.hub_location.relaxation import Relaxation, build_relaxation
 from hubdesign.solve.hub_location.root import Root
@@ -115,7 +115,9 @@ def solve_single(instance: HubInstance, control: Control, allocations: tuple[Int
     bound = root.run()
     if not root.finished and not control.stop_requested():
         bound = AllocationTree(instance, root, incumbent, control, bound).run()
-    return _answer(incumbent, relaxation, bound, control)
+    own = incumbent.allocation
+    hubs = () if own is None else tuple(np.unique(own).tolist())
+    return conclude(incumbent, hubs, own, bound, TOLERANCE, control)
 
 
 def _with_fewest_hubs(instance: HubInstance, relaxation: Relaxation) -> Relaxation:
@@ -324,21 +326,3 @@ def _pair_floor(choice: Choice, pairs: Pairs) -> Floats:
     both = choice.volume + choice.volume.T
     floor = np.bincount(pairs.first, both[pairs.first, pairs.second] * least, len(choice.own))
     return floor.astype(np.float64)
-
-
-def _answer(incumbent: SingleIncumbent, relaxation: Relaxation, bound: float, control: Control) -> HubAnswer:
-    """Return the answer in money; the bound never above the plan."""
-    if incumbent.allocation is None:
-        done = bound == np.inf
-        status = HubStatus.INFEASIBLE if done else HubStatus.UNKNOWN
-        money = np.inf if done else (bound + relaxation.constant) / relaxation.scale
-        return HubAnswer((), None, np.inf, money, status)
-    cutoff = incumbent.cutoff()
-    proven = bound >= cutoff
-    low = min(bound, cutoff) - 0.1 * TOLERANCE * abs(incumbent.cost + incumbent.shift)
-    objective = (incumbent.cost + incumbent.shift) / incumbent.scale
-    status = HubStatus.PROVEN if proven else HubStatus.FEASIBLE
-    money = (low + incumbent.shift) / incumbent.scale
-    control.report(best=objective, bound=money)
-    hubs = tuple(int(h) for h in np.unique(incumbent.allocation))
-    return HubAnswer(hubs, incumbent.allocation, objective, money, status)
